@@ -1,0 +1,6 @@
+//! Independent check of radiotherapy plans in batch. The stages, in order:
+//! each may use the ones before it and none after it.
+
+pub mod quantity;
+
+pub mod plan;

@@ -1,0 +1,3 @@
+//! The program: see `cli`.
+
+fn main() {}

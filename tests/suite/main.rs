@@ -1,0 +1,1 @@
+//! The integration tests, one binary. Each module says what it holds against what.

@@ -4,3 +4,5 @@
 pub mod quantity;
 
 pub mod plan;
+
+pub mod beam_model;

@@ -3,6 +3,10 @@
 
 pub mod quantity;
 
+pub mod settings;
+
 pub mod plan;
 
 pub mod beam_model;
+
+pub mod dose;

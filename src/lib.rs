@@ -10,3 +10,5 @@ pub mod plan;
 pub mod beam_model;
 
 pub mod dose;
+
+pub mod audit;

@@ -5,6 +5,8 @@ pub mod quantity;
 
 pub mod settings;
 
+pub mod intake;
+
 pub mod plan;
 
 pub mod beam_model;

@@ -5,8 +5,12 @@ pub mod quantity;
 
 pub mod settings;
 
+pub mod intake;
+
 pub mod plan;
 
 pub mod beam_model;
 
 pub mod dose;
+
+pub mod audit;

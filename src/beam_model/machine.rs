@@ -46,6 +46,8 @@ pub struct MachineModel {
     pub sad_cm: f64,
     /// Which jaw pair is the upper one (nearer the source).
     pub upper_jaws: JawAxis,
+    /// Jaw pairs and leaf banks.
+    pub collimation: Collimation,
     /// Where the data come from.
     pub provenance: Provenance,
     /// Who approved the model for use; `None` when nobody did.
@@ -54,6 +56,52 @@ pub struct MachineModel {
     pub beams: Vec<BeamModel>,
     /// SHA-256 over every file of the model, hex.
     pub fingerprint: String,
+}
+
+/// What shapes the field. Distances and limits that the model does not give are `None`.
+#[derive(Clone, Debug, Default, PartialEq, Serialize)]
+pub struct Collimation {
+    /// The two jaw pairs.
+    pub jaws: Vec<JawPair>,
+    /// Leaf banks; none when the machine has none or the model does not give them.
+    pub leaf_banks: Vec<LeafBank>,
+}
+
+/// One jaw pair.
+#[derive(Clone, Debug, PartialEq, Serialize)]
+pub struct JawPair {
+    /// The axis it limits.
+    pub moves_along: JawAxis,
+    /// Source to the pair's end on the patient's side, cm.
+    pub source_distance_cm: Option<f64>,
+    /// Limits of travel.
+    pub travel: Travel,
+}
+
+/// One pair of opposed leaf banks.
+#[derive(Clone, Debug, PartialEq, Serialize)]
+pub struct LeafBank {
+    /// The axis its leaves move along.
+    pub moves_along: LeafAxis,
+    /// Source to the middle of the leaves, cm.
+    pub source_distance_cm: Option<f64>,
+    /// Boundaries between leaves at the isocentre plane, cm, rising; one more than leaf pairs.
+    pub boundaries_cm: Vec<f64>,
+    /// Mean transmission through and between leaves, a share.
+    pub transmission: f64,
+    /// How far the radiation edge lies behind the end of a rounded leaf, cm at the isocentre plane.
+    pub leaf_end_offset_cm: f64,
+    /// Limits of travel.
+    pub travel: Travel,
+}
+
+/// Limits of travel of one jaw or leaf at the isocentre plane.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Serialize)]
+pub struct Travel {
+    /// Furthest from the axis on its own side, cm.
+    pub outward_cm: Option<f64>,
+    /// Furthest across the axis, cm.
+    pub across_cm: Option<f64>,
 }
 
 /// Where a model's data come from.

@@ -4,12 +4,23 @@
 //! factors mean and how they are multiplied is the work of `dose`.
 
 mod beam;
+mod error;
+mod load_beam;
+mod load_machine;
 mod machine;
+mod machine_file;
+mod model_folder;
 mod table;
+mod table_file;
 
 pub use beam::{
     BeamModel, BeamUncertainty, CouchArc, OffAxis, OffAxisKind, OutputTable, ReferenceOutput,
     TableKind,
 };
-pub use machine::{Approval, DataOrigin, JawAxis, MachineModel, ModelSet, ProofPoint, Provenance};
+pub use error::ModelError;
+pub use load_machine::{load_machine, load_models};
+pub use machine::{
+    Approval, Collimation, DataOrigin, JawAxis, JawPair, LeafBank, MachineModel, ModelSet,
+    ProofPoint, Provenance, Travel,
+};
 pub use table::{Cell, DepthInterpolation, Grid, GridError, Lookup, OutOfRange};

@@ -184,8 +184,14 @@ pub enum ObstacleKind {
     Depth,
     /// No comparable planned dose.
     PlannedDose,
-    /// Outside the method's range: build-up, field edge, under a jaw, table range.
-    OutsideMethod,
+    /// Outside the method's range: shallower than the depth of dose maximum.
+    BuildUp,
+    /// Outside the method's range: too near a field edge.
+    FieldEdge,
+    /// Outside the method's range: outside the opening.
+    UnderDevice,
+    /// Outside the method's range: beyond a measured table.
+    TableRange,
 }
 
 /// One obstacle.
@@ -310,4 +316,12 @@ pub struct BeamCalculation {
     pub remarks: Vec<String>,
     /// For the picture.
     pub view: BeamView,
+}
+
+impl BeamCalculation {
+    /// Whether there is a dose per MU at all.
+    #[must_use]
+    pub const fn is_calculated(&self) -> bool {
+        self.trace.is_some()
+    }
 }

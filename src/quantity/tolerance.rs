@@ -26,3 +26,9 @@ pub const SHARED_POINT_CM: f64 = 0.05;
 
 /// A table look-up this close to a grid line or to the table's edge counts as on it, cm (float noise of projections).
 pub const TABLE_EDGE_CM: f64 = 1e-9;
+
+/// A depth table counts as normalised where its file says when it is 1 there within this share: the rounding of a clinic's PDD (0.1 in 66) and of interpolated maxima.
+pub const TABLE_NORM_RELATIVE: f64 = 5e-3;
+
+/// Sc and Sp at 10 cm, and off-axis ratios on the axis, are 1 within this share (rounding to three decimals, with room).
+pub const FACTOR_NORM_RELATIVE: f64 = 2e-3;

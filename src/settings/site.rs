@@ -6,8 +6,9 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 use serde::{Deserialize, Serialize};
-use sha2::{Digest, Sha256};
 use thiserror::Error;
+
+use crate::quantity::sha256_hex;
 
 /// Everything a department may set. `Site::default()` is what holds without a site file.
 #[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
@@ -249,7 +250,7 @@ impl Site {
         let site = Self::parse(&text, &file)?;
         let source = SiteSource {
             file: Some(path.to_path_buf()),
-            sha256: Some(hex(&Sha256::digest(text.as_bytes()))),
+            sha256: Some(sha256_hex(text.as_bytes())),
         };
         Ok((site, source))
     }
@@ -358,12 +359,4 @@ impl Site {
         }
         Ok(())
     }
-}
-
-fn hex(bytes: &[u8]) -> String {
-    use std::fmt::Write;
-    bytes.iter().fold(String::new(), |mut text, byte| {
-        let _ = write!(text, "{byte:02x}");
-        text
-    })
 }

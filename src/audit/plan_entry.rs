@@ -6,9 +6,7 @@ use super::compare::beam_entry;
 use super::group::{judge_group, strictest_levels};
 use super::{BeamEntry, PlanEntry, SharedPointSum, Verdict};
 use crate::beam_model::{DataOrigin, ModelSet};
-use crate::dose::{
-    BeamRequest, DepthRow, ModelAnswer, Obstacle, ObstacleKind, calculate_beam,
-};
+use crate::dose::{BeamRequest, DepthRow, ModelAnswer, Obstacle, ObstacleKind, calculate_beam};
 use crate::plan::{Effect, NoteScope, Plan};
 use crate::settings::Site;
 
@@ -129,7 +127,12 @@ fn model_for<'a>(input: PlanInput<'a>, beam_index: usize) -> ModelAnswer<'a> {
     match machine.and_then(|name| input.models.machine_for(name)) {
         Some(model) => ModelAnswer::Found(model),
         None => ModelAnswer::Unknown {
-            known_names: input.models.known_names(),
+            known_names: input
+                .models
+                .known_names()
+                .into_iter()
+                .map(str::to_owned)
+                .collect(),
         },
     }
 }

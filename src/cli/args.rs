@@ -164,7 +164,12 @@ pub(super) struct FieldArguments {
     #[arg(long, value_name = "RATIO")]
     pub(super) sp: Option<f64>,
     /// TPR or TMR at the point
-    #[arg(long, visible_alias = "tmr", value_name = "RATIO", conflicts_with = "pdd")]
+    #[arg(
+        long,
+        visible_alias = "tmr",
+        value_name = "RATIO",
+        conflicts_with = "pdd"
+    )]
     pub(super) tpr: Option<f64>,
     /// Percent depth dose at the point, per cent
     #[arg(long, value_name = "PERCENT")]

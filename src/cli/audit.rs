@@ -136,7 +136,7 @@ fn facts(
 }
 
 /// The time of the run: now, or SOURCE_DATE_EPOCH (seconds since 1970, UTC) for reports that must be repeatable to the byte.
-fn started() -> anyhow::Result<jiff::Zoned> {
+fn started() -> anyhow::Result<jiff::ZonedDateTime> {
     match std::env::var("SOURCE_DATE_EPOCH") {
         Ok(seconds) => {
             let seconds: i64 = seconds
@@ -144,9 +144,9 @@ fn started() -> anyhow::Result<jiff::Zoned> {
                 .parse()
                 .with_context(|| format!("SOURCE_DATE_EPOCH is {seconds:?}, must be seconds"))?;
             let instant = jiff::Timestamp::from_second(seconds).context("SOURCE_DATE_EPOCH")?;
-            Ok(instant.to_zoned(jiff::tz::TimeZone::UTC))
+            Ok(instant.to_zoned_datetime(jiff::tz::TimeZone::UTC))
         }
-        Err(_) => Ok(jiff::Zoned::now().round(jiff::Unit::Second)?),
+        Err(_) => Ok(jiff::ZonedDateTime::now().round(jiff::Unit::Second)?),
     }
 }
 

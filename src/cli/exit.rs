@@ -34,9 +34,7 @@ impl Exit {
     #[must_use]
     pub const fn meaning(self) -> &'static str {
         match self {
-            Self::Within => {
-                "every treatment beam was verified and is within what --fail-on names"
-            }
+            Self::Within => "every treatment beam was verified and is within what --fail-on names",
             Self::Beyond => "a deviation or a finding is beyond what --fail-on names",
             Self::Failed => {
                 "the run itself failed (usage, models, nothing to audit, output not writable)"

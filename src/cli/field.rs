@@ -53,7 +53,11 @@ fn calculate(
     } else {
         write!(out, "{}", trace_text(&trace))?;
         if let Some((mayneord, _)) = &corrected {
-            writeln!(out, "Mayneord F = {:.6}, PDD = {:.3} %", mayneord.factor, mayneord.pdd_percent)?;
+            writeln!(
+                out,
+                "Mayneord F = {:.6}, PDD = {:.3} %",
+                mayneord.factor, mayneord.pdd_percent
+            )?;
         }
         if let Some(dose_gy) = arguments.dose {
             let mu = 100.0 * dose_gy / trace.dose_per_mu_cgy;
@@ -77,7 +81,7 @@ fn calculate(
     let outside = outside_method(&field, d_max_cm, site.technical.edge_margin_cm);
     if !arguments.json {
         for reason in &outside {
-            writeln!(out, "outside the method's range, no verification: {reason}")?;
+            writeln!(out, "no verification: {}", reason.message)?;
         }
         if d_max_cm.is_none() {
             writeln!(
@@ -97,18 +101,50 @@ fn calculate(
 fn check(arguments: &FieldArguments) -> anyhow::Result<()> {
     let lengths = [
         ("--depth", Some(arguments.depth), Quantity::Depth),
-        ("--effective-depth", arguments.effective_depth, Quantity::Depth),
+        (
+            "--effective-depth",
+            arguments.effective_depth,
+            Quantity::Depth,
+        ),
         ("--d-max", arguments.d_max, Quantity::Depth),
-        ("--reference-depth", arguments.reference_depth, Quantity::Depth),
+        (
+            "--reference-depth",
+            arguments.reference_depth,
+            Quantity::Depth,
+        ),
         ("--sad", Some(arguments.sad), Quantity::SourceAxisDistance),
         ("--ssd", arguments.ssd, Quantity::SourceSurfaceDistance),
-        ("--pdd-ssd", arguments.pdd_ssd, Quantity::SourceSurfaceDistance),
-        ("--reference-distance", arguments.reference_distance, Quantity::SourceSurfaceDistance),
+        (
+            "--pdd-ssd",
+            arguments.pdd_ssd,
+            Quantity::SourceSurfaceDistance,
+        ),
+        (
+            "--reference-distance",
+            arguments.reference_distance,
+            Quantity::SourceSurfaceDistance,
+        ),
         ("--output", arguments.output, Quantity::ReferenceOutput),
-        ("--tray-factor", arguments.tray_factor, Quantity::Transmission),
-        ("--couch-factor", arguments.couch_factor, Quantity::Transmission),
-        ("--wedge-factor", arguments.wedge_factor, Quantity::Transmission),
-        ("--other-factor", arguments.other_factor, Quantity::Transmission),
+        (
+            "--tray-factor",
+            arguments.tray_factor,
+            Quantity::Transmission,
+        ),
+        (
+            "--couch-factor",
+            arguments.couch_factor,
+            Quantity::Transmission,
+        ),
+        (
+            "--wedge-factor",
+            arguments.wedge_factor,
+            Quantity::Transmission,
+        ),
+        (
+            "--other-factor",
+            arguments.other_factor,
+            Quantity::Transmission,
+        ),
         ("--dose", arguments.dose, Quantity::BeamDose),
         ("--mu", arguments.mu, Quantity::BeamMeterset),
     ];
@@ -161,7 +197,12 @@ fn chosen_model<'a>(
         .beams
         .iter()
         .find(|beam| beam.label == energy)
-        .with_context(|| format!("{name} has no energy {energy}; it has {}", labels.join(", ")))?;
+        .with_context(|| {
+            format!(
+                "{name} has no energy {energy}; it has {}",
+                labels.join(", ")
+            )
+        })?;
     Ok(Some((machine, beam)))
 }
 

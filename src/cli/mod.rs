@@ -57,8 +57,10 @@ fn run(arguments: Arguments, out: &mut dyn Write, err: &mut dyn Write) -> Exit {
 
 fn is_broken_pipe(error: &anyhow::Error) -> bool {
     error.chain().any(|cause| {
-        cause
-            .downcast_ref::<io::Error>()
-            .is_some_and(|error| error.kind() == io::ErrorKind::BrokenPipe)
+        let of_io = cause.downcast_ref::<io::Error>().map(io::Error::kind);
+        let of_json = cause
+            .downcast_ref::<serde_json::Error>()
+            .and_then(serde_json::Error::io_error_kind);
+        of_io.or(of_json) == Some(io::ErrorKind::BrokenPipe)
     })
 }

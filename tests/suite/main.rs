@@ -2,3 +2,8 @@
 
 /// Beam models: loader errors, published tables, shipped models.
 mod models;
+
+/// The order of the house, read from the sources.
+mod house;
+/// The site file.
+mod settings;

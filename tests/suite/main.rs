@@ -1,1 +1,10 @@
 //! The integration tests, one binary. Each module says what it holds against what.
+
+/// Builds RT Plan objects; used by every module that needs a plan.
+#[allow(
+    dead_code,
+    reason = "a tool kit: not every deviation is needed by a test yet"
+)]
+mod builder;
+/// The reader against plans that the builder writes, and against damaged files.
+mod reader;

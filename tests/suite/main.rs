@@ -7,3 +7,11 @@ mod models;
 mod house;
 /// The site file.
 mod settings;
+/// Builds RT Plan objects; used by every module that needs a plan.
+#[allow(
+    dead_code,
+    reason = "a tool kit: not every deviation is needed by a test yet"
+)]
+mod builder;
+/// The reader against plans that the builder writes, and against damaged files.
+mod reader;

@@ -43,9 +43,10 @@ fn shared_point_sum(entries: &[&mut BeamEntry]) -> Result<SharedPointSum, String
         return Err("no treatment beam".to_owned());
     };
     let name = |entry: &BeamEntry| {
-        entry
-            .beam_number
-            .map_or_else(|| "without a number".to_owned(), |number| number.to_string())
+        entry.beam_number.map_or_else(
+            || "without a number".to_owned(),
+            |number| number.to_string(),
+        )
     };
     if let Some(other) = treated.iter().find(|entry| !share_point(first, entry)) {
         return Err(format!(

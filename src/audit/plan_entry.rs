@@ -6,9 +6,7 @@ use super::compare::beam_entry;
 use super::group::{judge_group, strictest_levels};
 use super::{BeamEntry, PlanEntry, SharedPointSum, Verdict};
 use crate::beam_model::{DataOrigin, ModelSet};
-use crate::dose::{
-    BeamRequest, DepthRow, ModelAnswer, Obstacle, ObstacleKind, calculate_beam,
-};
+use crate::dose::{BeamRequest, DepthRow, ModelAnswer, Obstacle, ObstacleKind, calculate_beam};
 use crate::plan::{Effect, NoteScope, Plan};
 use crate::settings::Site;
 

@@ -32,7 +32,7 @@ pub enum ModelAnswer<'a> {
     /// None does.
     Unknown {
         /// The names that some model serves.
-        known_names: Vec<String>,
+        known_names: Vec<&'a str>,
     },
 }
 
@@ -328,14 +328,11 @@ fn calculate(
         typed: Vec::new(),
     };
     let site = request.site;
-    let outside = outside_method(
+    result.obstacles.extend(outside_method(
         &field,
         Some(model.beam.d_max_cm),
         site.technical.edge_margin_cm,
-    );
-    result
-        .obstacles
-        .extend(outside.into_iter().map(outside_obstacle));
+    ));
     match dose_per_mu(&field) {
         Ok(trace) => {
             result.spread = Some(spread_of(&field, model.beam, depth.basis, site));
@@ -350,16 +347,12 @@ fn note_result(trace: Trace, result: &mut BeamCalculation) {
     result.method = Some(Method::Factors);
 }
 
-fn outside_obstacle(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::OutsideMethod,
-        message: format!("outside the method's range: {message}"),
-    }
-}
-
 fn factor_obstacle(error: &FactorError) -> Obstacle {
     match error {
-        FactorError::OutOfRange { .. } => outside_obstacle(error.to_string()),
+        FactorError::OutOfRange { .. } => Obstacle {
+            kind: ObstacleKind::TableRange,
+            message: format!("outside the method's range: {error}"),
+        },
         FactorError::MissingFactor { .. } => Obstacle {
             kind: ObstacleKind::Model,
             message: error.to_string(),

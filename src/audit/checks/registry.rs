@@ -39,16 +39,14 @@ pub fn run_checks(input: &CheckInput<'_>, settings: &CheckSettings) -> Vec<Findi
                 .get(check.name)
                 .copied()
                 .unwrap_or(check.severity);
-            (check.look)(input)
-                .into_iter()
-                .map(move |seen| Finding {
-                    beam_number: seen.beam_number,
-                    check: check.name,
-                    severity,
-                    message: seen.message,
-                    measured: seen.measured,
-                    limit: seen.limit,
-                })
+            (check.look)(input).into_iter().map(move |seen| Finding {
+                beam_number: seen.beam_number,
+                check: check.name,
+                severity,
+                message: seen.message,
+                measured: seen.measured,
+                limit: seen.limit,
+            })
         })
         .collect()
 }

@@ -32,7 +32,7 @@ pub enum ModelAnswer<'a> {
     /// None does.
     Unknown {
         /// The names that some model serves.
-        known_names: Vec<String>,
+        known_names: Vec<&'a str>,
     },
 }
 

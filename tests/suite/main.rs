@@ -3,15 +3,15 @@
 /// Beam models: loader errors, published tables, shipped models.
 mod models;
 
-/// The order of the house, read from the sources.
-mod house;
-/// The site file.
-mod settings;
 /// Builds RT Plan objects; used by every module that needs a plan.
 #[allow(
     dead_code,
     reason = "a tool kit: not every deviation is needed by a test yet"
 )]
 mod builder;
+/// The order of the house, read from the sources.
+mod house;
 /// The reader against plans that the builder writes, and against damaged files.
 mod reader;
+/// The site file.
+mod settings;

@@ -127,12 +127,7 @@ fn model_for<'a>(input: PlanInput<'a>, beam_index: usize) -> ModelAnswer<'a> {
     match machine.and_then(|name| input.models.machine_for(name)) {
         Some(model) => ModelAnswer::Found(model),
         None => ModelAnswer::Unknown {
-            known_names: input
-                .models
-                .known_names()
-                .into_iter()
-                .map(str::to_owned)
-                .collect(),
+            known_names: input.models.known_names(),
         },
     }
 }

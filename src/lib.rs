@@ -12,3 +12,5 @@ pub mod beam_model;
 pub mod dose;
 
 pub mod audit;
+
+pub mod report;

@@ -15,5 +15,6 @@ mod builder;
 mod house;
 /// The reader against plans that the builder writes, and against damaged files.
 mod reader;
+mod report;
 /// The site file.
 mod settings;

@@ -2,3 +2,6 @@
 
 /// Beam models: loader errors, published tables, shipped models.
 mod models;
+
+/// The calculation of one beam.
+mod dose;

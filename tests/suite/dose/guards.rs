@@ -80,6 +80,28 @@ fn verify_field_edge() {
     assert_eq!(kinds(&at_x(-9.1)), [ObstacleKind::FieldEdge]);
 }
 
+/// X jaws limit x_b: a point 7 cm to the patient's left lies under X jaws at 5 cm and between them at 10 cm; a point
+/// 7 cm toward the head the other way round. With the collimator at 90 the jaws change places.
+#[test]
+fn verify_x_and_y_are_not_exchanged() {
+    let at = |point_cm: [f64; 3], collimator_deg: f64| {
+        let mut plan = plan_with_points(|point| {
+            point.jaws_x_cm = Given::stated([-10.0, 10.0]);
+            point.jaws_y_cm = Given::stated([-5.0, 5.0]);
+            point.collimator_deg = Given::stated(collimator_deg);
+        });
+        let [x_cm, y_cm, z_cm] = point_cm;
+        plan.fraction_groups[0].beams[0].specification_point =
+            Given::stated(Point::new(1.0 + x_cm, -2.0 + y_cm, 30.0 + z_cm));
+        kinds(&calculate(&plan))
+    };
+    let (left, head) = ([7.0, 0.0, 0.0], [0.0, 0.0, 7.0]);
+    assert_eq!(at(left, 0.0), []);
+    assert_eq!(at(head, 0.0), [ObstacleKind::UnderDevice]);
+    assert_eq!(at(left, 90.0), [ObstacleKind::UnderDevice]);
+    assert_eq!(at(head, 90.0), []);
+}
+
 /// 5 cm nearer the source everything is 0.95 times as large: 1.02 cm in the isocentre plane is 0.969 cm there.
 #[test]
 fn verify_field_edge_is_judged_in_the_points_plane() {

@@ -10,8 +10,8 @@ use counterfoil::dose::{
 };
 use counterfoil::plan::{
     Accessory, Applicator, Block, Bolus, Compensator, DeliveryType, DeviceKind, DoseReference,
-    Effect, LeafPositions, LimitingDevice, NoteKind, NoteScope, Plan, PointDepth, PointDepthPlace,
-    RadiationType, ReadingNote, ReferencedDose, Wedge, WedgePosition,
+    Effect, LeafPositions, LimitingDevice, NoteKind, NoteScope, PatientSetup, Plan, PointDepth,
+    PointDepthPlace, RadiationType, ReadingNote, ReferencedDose, Wedge, WedgePosition,
 };
 use counterfoil::quantity::{Given, Point};
 use counterfoil::settings::Site;
@@ -584,6 +584,17 @@ fn verify_depths_in_doubt_are_obstacles() {
     assert_eq!(at_points(Some(ISOCENTRE)), DepthBasis::Plan);
     assert_eq!(at_points(Some(ELSEWHERE)), DepthBasis::Ssd);
     assert_eq!(at_points(None), DepthBasis::Ssd);
+    // A reference without coordinates, but the one the beam's dose belongs to.
+    let named = plan_with(|plan| {
+        plan.dose_references = vec![reference(1, "TARGET", None)];
+        plan.fraction_groups[0].beams[0].dose_reference_uid = Given::stated("2.25.1".to_owned());
+        name_at_control_points(plan, &[1]);
+        for control_point in &mut plan.beams[0].control_points {
+            control_point.referenced_doses[0].point_depth =
+                Some(set(ControlPoint, depth_only(12.0)));
+        }
+    });
+    assert_eq!(calculate(&named).depths[0].basis, DepthBasis::Plan);
     // SSD beyond the point: above the surface.
     let above = calculate(&plan_with_points(|point| {
         point.ssd_cm = Given::stated(101.0)
@@ -836,6 +847,42 @@ fn verify_patient_position() {
     let result = calculate(&plan);
     assert!(kinds(&result).contains(&ObstacleKind::Reading));
     assert_eq!(result.trace, None);
+}
+
+/// Gantry 90: the source is on the left of a patient who lies supine with the head to the gantry, so a
+/// point 2 cm to the left is 2 cm nearer (SPD 98); with the feet to the gantry it is on the right (SPD 102).
+#[test]
+fn verify_patient_position_of_the_beams_own_setup() {
+    use counterfoil::plan::PatientPosition::{FeetFirstSupine, HeadFirstSupine};
+    for (position, spd_cm) in [(HeadFirstSupine, 98.0), (FeetFirstSupine, 102.0)] {
+        let mut plan = plan_with_points(|point| point.gantry_deg = Given::stated(90.0));
+        let other = PatientSetup {
+            number: Given::stated(2),
+            position: Given::stated(position),
+            ..PatientSetup::default()
+        };
+        plan.patient_setups.push(other);
+        plan.beams[0].patient_setup_number = Given::stated(2);
+        plan.fraction_groups[0].beams[0].specification_point =
+            Given::stated(Point::new(3.0, -2.0, 30.0));
+        let result = calculate(&plan);
+        assert_eq!(result.obstacles, []);
+        assert_close(result.point.unwrap().spd_cm.unwrap(), spd_cm, 1e-9);
+        // 90 cm to the surface: 8 and 12 cm deep.
+        assert_close(
+            result.depths[0].perpendicular_cm.unwrap(),
+            spd_cm - 90.0,
+            1e-9,
+        );
+    }
+    // No setup named, and two that differ: not known.
+    let mut plan = plain_plan();
+    plan.patient_setups.push(PatientSetup {
+        position: Given::stated(FeetFirstSupine),
+        ..PatientSetup::default()
+    });
+    plan.beams[0].patient_setup_number = Given::Absent;
+    assert_eq!(kinds(&calculate(&plan)), [ObstacleKind::Reading]);
 }
 
 /// A reading note that blocks the beam, its group or the plan stands as an obstacle with place and message.

@@ -28,6 +28,7 @@ fn typed_field<'a>(
         depth: FieldDepth {
             perpendicular_cm: Some(depth_cm),
             effective_cm: depth_cm,
+            source: "typed".to_owned(),
         },
         form,
         tray: None,

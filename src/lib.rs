@@ -14,3 +14,9 @@ pub mod beam_model;
 pub mod dose;
 
 pub mod audit;
+
+pub mod report;
+
+pub mod batch;
+
+pub mod cli;

@@ -35,7 +35,7 @@ pub struct RunFacts {
     /// Version of the program.
     pub version: String,
     /// Start, with its zone.
-    pub started: jiff::Zoned,
+    pub started: jiff::ZonedDateTime,
     /// Paths as typed.
     pub inputs: Vec<String>,
     /// Options as lines; none may depend on the number of threads.
@@ -101,7 +101,9 @@ pub enum BatchError {
         files: usize,
     },
     /// Rows of the depth table that no beam used.
-    #[error("depth table: no plan of this run has {rows}; correct the table, or leave the rows out")]
+    #[error(
+        "depth table: no plan of this run has {rows}; correct the table, or leave the rows out"
+    )]
     UnusedDepthRows {
         /// The rows, in words.
         rows: String,
@@ -333,10 +335,7 @@ fn note_used_rows(plan: &PlanEntry, used: &mut HashSet<(String, i32)>) {
     }
 }
 
-fn refuse_unused_rows(
-    rows: &[DepthRow],
-    used: &HashSet<(String, i32)>,
-) -> Result<(), BatchError> {
+fn refuse_unused_rows(rows: &[DepthRow], used: &HashSet<(String, i32)>) -> Result<(), BatchError> {
     let unused: Vec<String> = rows
         .iter()
         .filter(|row| !used.contains(&(row.sop_instance_uid.clone(), row.beam_number)))

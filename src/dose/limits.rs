@@ -14,11 +14,11 @@ pub fn outside_method(
     d_max_cm: Option<f64>,
     edge_margin_cm: f64,
 ) -> Vec<Obstacle> {
-    let mut found = Vec::new();
-    let mut object = |kind, message: String| {
-        found.push(Obstacle {
+    let mut reasons = Vec::new();
+    let mut outside = |kind: ObstacleKind, why: String| {
+        reasons.push(Obstacle {
             kind,
-            message: format!("outside the method's range: {message}"),
+            message: format!("outside the method's range: {why}"),
         });
     };
     let shallower_cm = field
@@ -30,7 +30,7 @@ pub fn outside_method(
     if let Some(d_max_cm) = d_max_cm
         && shallower_cm < d_max_cm - tolerance::TABLE_EDGE_CM
     {
-        object(
+        outside(
             ObstacleKind::BuildUp,
             format!(
                 "the point lies in the build-up: depth {shallower_cm:.2} cm, dose maximum at {d_max_cm:.2} cm"
@@ -43,7 +43,7 @@ pub fn outside_method(
     ] {
         let inside_cm = (at_cm - jaws_cm[0]).min(jaws_cm[1] - at_cm) * field.ray.scale();
         if inside_cm < 0.0 {
-            object(
+            outside(
                 ObstacleKind::UnderDevice,
                 format!(
                     "the point lies under a jaw: {axis} {at_cm:.2} cm in the isocentre plane, opening {:.2} to {:.2} cm",
@@ -51,7 +51,7 @@ pub fn outside_method(
                 ),
             );
         } else if inside_cm < edge_margin_cm - tolerance::TABLE_EDGE_CM {
-            object(
+            outside(
                 ObstacleKind::FieldEdge,
                 format!(
                     "the point lies {inside_cm:.2} cm from a field edge along {axis}, in its own plane; the method needs {edge_margin_cm:.2} cm"
@@ -59,5 +59,5 @@ pub fn outside_method(
             );
         }
     }
-    found
+    reasons
 }

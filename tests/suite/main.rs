@@ -5,3 +5,15 @@ mod models;
 
 /// The calculation of one beam.
 mod dose;
+/// Builds RT Plan objects; used by every module that needs a plan.
+#[allow(
+    dead_code,
+    reason = "a tool kit: not every deviation is needed by a test yet"
+)]
+mod builder;
+/// The order of the house, read from the sources.
+mod house;
+/// The reader against plans that the builder writes, and against damaged files.
+mod reader;
+/// The site file.
+mod settings;

@@ -5,6 +5,8 @@ mod models;
 
 /// Whole plans from bytes to verdicts.
 mod audit;
+/// The calculation of one beam.
+mod dose;
 /// Builds RT Plan objects; used by every module that needs a plan.
 #[allow(
     dead_code,

@@ -17,6 +17,7 @@ mod outcome;
 mod placement;
 mod point;
 mod prerequisite;
+mod proof;
 mod ray;
 mod spread;
 mod technique;
@@ -35,6 +36,7 @@ pub use outcome::{
     BeamCalculation, BeamView, BlockOutline, DepthBasis, DepthCandidate, DosePoint, LeafOpening,
     Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares, Technique,
 };
+pub use proof::prove;
 pub use ray::RayPoint;
 pub use spread::expected_spread;
 pub use technique::classify;

@@ -159,7 +159,17 @@ pub enum ReadError {
         /// Limit.
         limit: usize,
     },
-    /// More elements, items, control points or notes than any plan has.
+    /// More beams, devices or control points than any plan has.
+    #[error("more than {limit} {what} in {place}; refused as damaged")]
+    TooManyParts {
+        /// What there is too much of.
+        what: &'static str,
+        /// The sequence, with tag.
+        place: String,
+        /// Limit.
+        limit: usize,
+    },
+    /// More elements or items than any plan has.
     #[error("more than {limit} {what} at byte {offset} ({place}); refused as damaged")]
     TooMany {
         /// What there is too much of.

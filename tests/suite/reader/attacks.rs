@@ -291,6 +291,6 @@ fn verify_counts_beyond_any_plan_are_refused() {
         .collect();
     let error = read_plan(&plan_then(&elements)).expect_err("too many");
     assert!(matches!(error, ReadError::TooMany { .. }), "{error}");
-    let error = read_plan(&vec![0; (64 << 20) + 1]).expect_err("too large");
+    let error = read_plan(&vec![0; (32 << 20) + 1]).expect_err("too large");
     assert!(matches!(error, ReadError::TooLarge { .. }), "{error}");
 }

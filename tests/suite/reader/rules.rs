@@ -214,6 +214,7 @@ fn verify_undeclared_devices() {
         beam.devices.remove(0);
         beam
     });
+    assert!(!blocked(&plan));
     assert_eq!(
         effects(&plan, NoteKind::DanglingReference, ""),
         [Effect::None]
@@ -406,6 +407,37 @@ fn verify_wedge_positions() {
         Given::stated(false)
     );
     assert_eq!(plan.notes, []);
+}
+
+#[test]
+fn verify_wedge_numbers_are_unique() {
+    let plan = with_beam(|beam| beam.with_wedge(wedge(1)).with_wedge(wedge(1)));
+    assert_eq!(
+        effects(&plan, NoteKind::RepeatedNumber, "WedgeSequence"),
+        [Effect::BlocksScope]
+    );
+}
+
+#[test]
+fn verify_control_point_indices_follow_the_items() {
+    let index = |text: &str| changed(&FIRST_POINT, tags::CONTROL_POINT_INDEX, VR::IS, text);
+    let place = "ControlPointSequence (300A,0111)";
+    assert_eq!(
+        effects(&index("5"), NoteKind::CountMismatch, place),
+        [Effect::BlocksScope]
+    );
+    assert_eq!(index("").notes, []);
+}
+
+#[test]
+fn verify_source_distances_may_be_missing() {
+    let plan = with_beam(|mut beam| {
+        beam.devices[0].source_distance_cm = None;
+        beam
+    });
+    let note = &plan.notes[0];
+    assert_eq!((note.kind, note.effect), (NoteKind::Remark, Effect::None));
+    assert!(note.message.ends_with("for ASYMX"), "{}", note.message);
 }
 
 #[test]

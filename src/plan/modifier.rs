@@ -19,6 +19,7 @@ pub enum WedgeKind {
     /// Partial wedge that does not reach the axis.
     PartialStandard,
     /// Partial wedge that does not reach the axis, motorised.
+    #[serde(rename = "PARTIAL_MOTORIZ")]
     PartialMotorized,
     /// Anything else, as the file says.
     #[serde(untagged)]

@@ -2,7 +2,7 @@
 //! a band around it. Rules over its shape are for `depth_table`.
 
 use super::ModelFinding;
-use super::depth_table::{coordinate, full};
+use super::depth_table::coordinate;
 use super::outlier::{self, Outlier};
 use super::quality;
 use crate::beam_model::kernel::PencilKernel;
@@ -125,18 +125,28 @@ fn kernel_ratios(beam: &BeamModel, kernel: &PencilKernel) -> KernelRatios {
     let first = table.rows().partition_point(|&depth| depth < from_cm);
     // With d0 itself in the build-up of the kernel, only the shape below counts: take 10 cm as the common depth.
     let common_cm = if d0_cm >= from_cm { d0_cm } else { 10.0 };
+    let kernel_dose = |depth: f64, side: f64| match beam.table_kind {
+        TableKind::Tpr => kernel.square_dose(side, depth),
+        TableKind::Pdd { ssd_cm } => {
+            let spd_cm = ssd_cm + depth;
+            kernel.square_dose(side * spd_cm / ssd_cm, depth) / spd_cm.powi(2)
+        }
+    };
+    let measured_at_common = |side| {
+        table
+            .at(common_cm, side)
+            .map_or(f64::NAN, |found| found.value)
+    };
+    let common: Vec<f64> = table
+        .columns()
+        .iter()
+        .map(|&side| measured_at_common(side) / kernel_dose(common_cm, side))
+        .collect();
     let mut ratios = Vec::new();
     for (row, &depth) in table.rows().iter().enumerate().skip(first) {
-        for (column, &side) in table.columns().iter().enumerate() {
-            let expected = match beam.table_kind {
-                TableKind::Tpr => kernel.tpr(depth, side, common_cm),
-                TableKind::Pdd { ssd_cm } => kernel.pdd_percent(depth, side, (ssd_cm, common_cm)),
-            };
-            let common = table
-                .at(common_cm, side)
-                .map_or(f64::NAN, |found| found.value);
-            let here = table.cell_value(row, column).unwrap_or(f64::NAN);
-            ratios.push((here / common * full(beam) / expected).ln());
+        for (column, (&side, common)) in table.columns().iter().zip(&common).enumerate() {
+            let measured = table.cell_value(row, column).unwrap_or(f64::NAN);
+            ratios.push((measured / kernel_dose(depth, side) / common).ln());
         }
     }
     KernelRatios {

@@ -21,7 +21,7 @@ pub(super) fn check(beam: &BeamModel) -> Vec<ModelFinding> {
 }
 
 /// The value that stands for all of the dose at the normalisation depth.
-pub(super) fn full(beam: &BeamModel) -> f64 {
+fn full(beam: &BeamModel) -> f64 {
     match beam.table_kind {
         TableKind::Tpr => 1.0,
         TableKind::Pdd { .. } => 100.0,

@@ -3,6 +3,20 @@
 
 pub mod quantity;
 
+pub mod settings;
+
+pub mod intake;
+
 pub mod plan;
 
 pub mod beam_model;
+
+pub mod dose;
+
+pub mod audit;
+
+pub mod report;
+
+pub mod batch;
+
+pub mod cli;

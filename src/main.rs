@@ -1,3 +1,7 @@
-//! The program: see `cli`.
+//! The program: arguments, output and exit status are the work of `cli`.
 
-fn main() {}
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    counterfoil::cli::main()
+}

@@ -1,6 +1,6 @@
 //! A beam: what does not change from control point to control point.
 
-use serde::Serialize;
+use serde::{Serialize, Serializer};
 
 use super::{Accessory, Applicator, Block, Bolus, Compensator, ControlPoint, Wedge};
 use crate::quantity::{Given, tolerance};
@@ -121,6 +121,36 @@ pub struct BeamEnergy {
     pub changes: bool,
 }
 
+impl DeliveryType {
+    /// From the DICOM term.
+    #[must_use]
+    pub fn from_term(term: &str) -> Self {
+        match term {
+            "TREATMENT" => Self::Treatment,
+            "CONTINUATION" => Self::Continuation,
+            "SETUP" => Self::Setup,
+            "OPEN_PORTFILM" => Self::OpenPortfilm,
+            "TRMT_PORTFILM" => Self::TrmtPortfilm,
+            "VERIFICATION" => Self::Verification,
+            other => Self::Other(other.to_owned()),
+        }
+    }
+
+    /// Whether such a beam is delivered for treatment. Unknown terms count as treatment.
+    #[must_use]
+    pub const fn is_treatment(&self) -> bool {
+        matches!(self, Self::Treatment | Self::Continuation | Self::Other(_))
+    }
+}
+
+impl Beam {
+    /// Whether the beam is delivered for treatment; a beam that does not say is.
+    #[must_use]
+    pub fn is_treatment(&self) -> bool {
+        self.delivery.value().is_none_or(DeliveryType::is_treatment)
+    }
+}
+
 impl BeamEnergy {
     /// Energy as in outputs: `6`, `6-FFF`, `9`; `None` when not stated.
     #[must_use]
@@ -147,9 +177,8 @@ impl BeamEnergy {
     }
 }
 
-/// RT Beam Limiting Device Type (300A,00B8).
-#[derive(Clone, Debug, PartialEq, Eq, Serialize)]
-#[serde(rename_all = "UPPERCASE")]
+/// RT Beam Limiting Device Type (300A,00B8). Serialised as the DICOM term.
+#[derive(Clone, Debug, PartialEq, Eq)]
 pub enum DeviceKind {
     /// Symmetric X jaws.
     X,
@@ -170,7 +199,6 @@ pub enum DeviceKind {
         layer: u8,
     },
     /// Anything else, as the file says: makes the beam not verifiable.
-    #[serde(untagged)]
     Other(String),
 }
 
@@ -185,6 +213,42 @@ pub enum LeafAxis {
 }
 
 impl DeviceKind {
+    /// From the DICOM term.
+    #[must_use]
+    pub fn from_term(term: &str) -> Self {
+        match term {
+            "X" => Self::X,
+            "Y" => Self::Y,
+            "ASYMX" => Self::AsymX,
+            "ASYMY" => Self::AsymY,
+            "MLCX" => Self::Mlcx { layer: 0 },
+            "MLCX1" => Self::Mlcx { layer: 1 },
+            "MLCX2" => Self::Mlcx { layer: 2 },
+            "MLCY" => Self::Mlcy { layer: 0 },
+            "MLCY1" => Self::Mlcy { layer: 1 },
+            "MLCY2" => Self::Mlcy { layer: 2 },
+            other => Self::Other(other.to_owned()),
+        }
+    }
+
+    /// The DICOM term.
+    #[must_use]
+    pub fn term(&self) -> &str {
+        match self {
+            Self::X => "X",
+            Self::Y => "Y",
+            Self::AsymX => "ASYMX",
+            Self::AsymY => "ASYMY",
+            Self::Mlcx { layer: 1 } => "MLCX1",
+            Self::Mlcx { layer: 2 } => "MLCX2",
+            Self::Mlcx { .. } => "MLCX",
+            Self::Mlcy { layer: 1 } => "MLCY1",
+            Self::Mlcy { layer: 2 } => "MLCY2",
+            Self::Mlcy { .. } => "MLCY",
+            Self::Other(text) => text,
+        }
+    }
+
     /// Whether the device is a leaf bank, and along which axis its leaves move.
     #[must_use]
     pub const fn leaf_axis(&self) -> Option<LeafAxis> {
@@ -203,6 +267,12 @@ impl DeviceKind {
             Self::Y | Self::AsymY => Some(LeafAxis::Y),
             _ => None,
         }
+    }
+}
+
+impl Serialize for DeviceKind {
+    fn serialize<S: Serializer>(&self, serializer: S) -> Result<S::Ok, S::Error> {
+        serializer.serialize_str(self.term())
     }
 }
 

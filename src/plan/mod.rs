@@ -6,6 +6,7 @@
 
 mod beam;
 mod control_point;
+mod dicom;
 mod fraction;
 mod identity;
 mod modifier;
@@ -16,6 +17,7 @@ pub use beam::{
     Beam, BeamEnergy, DeliveryType, DeviceKind, LeafAxis, LimitingDevice, RadiationType,
 };
 pub use control_point::{ControlPoint, LeafPositions, ReferencedDose, WedgePosition};
+pub use dicom::{FileKind, Identified, ReadError, identify, read_plan};
 pub use fraction::{
     DoseMeaning, DoseType, FractionGroup, GroupDoseReference, PointDepth, PointDepthPlace,
     ReferencedBeam,

@@ -5,12 +5,14 @@
 //! Lengths are cm, angles degrees, dose Gy, output cGy/MU; every name carries
 //! its unit. This stage knows nothing about plans, models or files.
 
+mod fingerprint;
 mod frame;
 mod given;
 mod range;
 mod square;
 pub mod tolerance;
 
+pub use fingerprint::{hex, sha256_hex};
 pub use frame::{Collimator, Fixed, Frame, Gantry, Patient, Point, Vector};
 pub use given::Given;
 pub use range::{CredibleRange, Quantity};

@@ -1,0 +1,127 @@
+//! The user's depth table: one row a beam, from CSV.
+
+use std::collections::HashSet;
+use std::fs::File;
+use std::path::Path;
+
+use serde::Deserialize;
+use thiserror::Error;
+
+use crate::dose::DepthRow;
+use crate::quantity::Quantity;
+
+/// Why a depth table was refused.
+#[derive(Debug, Error)]
+pub enum DepthTableError {
+    /// It could not be opened.
+    #[error("depth table {file}: cannot be read")]
+    Unreadable {
+        /// The file.
+        file: String,
+        /// Cause.
+        source: std::io::Error,
+    },
+    /// A row is not what it must be.
+    #[error("depth table {file}, line {line}: {message}")]
+    Row {
+        /// The file.
+        file: String,
+        /// The line, from 1.
+        line: u64,
+        /// What is wrong.
+        message: String,
+    },
+}
+
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+struct RawRow {
+    sop_instance_uid: String,
+    beam_number: i32,
+    depth_cm: f64,
+    effective_depth_cm: Option<f64>,
+    ssd_cm: Option<f64>,
+    independent: String,
+}
+
+/// Reads a depth table: header `sop_instance_uid, beam_number, depth_cm,
+/// effective_depth_cm, ssd_cm, independent`, depths along the ray from the
+/// source to the dose point, `independent` yes or no.
+///
+/// # Errors
+/// When a row cannot be read, is not credible, or names a beam twice.
+pub fn read_depth_table(path: &Path) -> Result<Vec<DepthRow>, DepthTableError> {
+    let file = path.display().to_string();
+    let reader = File::open(path).map_err(|source| DepthTableError::Unreadable {
+        file: file.clone(),
+        source,
+    })?;
+    let mut table = csv::ReaderBuilder::new()
+        .trim(csv::Trim::All)
+        .comment(Some(b'#'))
+        .from_reader(reader);
+    let headers = table.headers().cloned();
+    let mut rows = Vec::new();
+    let mut seen = HashSet::new();
+    let mut record = csv::StringRecord::new();
+    loop {
+        let refuse = |line: u64, message: String| DepthTableError::Row {
+            file: file.clone(),
+            line,
+            message,
+        };
+        let more = table.read_record(&mut record).map_err(|error| {
+            let line = error.position().map_or(0, csv::Position::line);
+            refuse(line, error.to_string())
+        })?;
+        if !more {
+            return Ok(rows);
+        }
+        let line = record.position().map_or(0, csv::Position::line);
+        let header = headers
+            .as_ref()
+            .map_err(|error| refuse(1, error.to_string()))?;
+        let raw: RawRow = record
+            .deserialize(Some(header))
+            .map_err(|error| refuse(line, error.to_string()))?;
+        let row = check(raw).map_err(|message| refuse(line, message))?;
+        if !seen.insert((row.sop_instance_uid.clone(), row.beam_number)) {
+            return Err(refuse(
+                line,
+                format!(
+                    "beam {} of this plan stands twice in the table",
+                    row.beam_number
+                ),
+            ));
+        }
+        rows.push(row);
+    }
+}
+
+fn check(raw: RawRow) -> Result<DepthRow, String> {
+    let depths = [Some(raw.depth_cm), raw.effective_depth_cm];
+    for depth_cm in depths.into_iter().flatten() {
+        if let Some(objection) = Quantity::Depth.objection(depth_cm) {
+            return Err(objection);
+        }
+    }
+    if let Some(objection) = raw
+        .ssd_cm
+        .and_then(|ssd_cm| Quantity::SourceSurfaceDistance.objection(ssd_cm))
+    {
+        return Err(objection);
+    }
+    let independent = match raw.independent.to_ascii_lowercase().as_str() {
+        "yes" => true,
+        "no" => false,
+        other => return Err(format!("independent is {other:?}, must be yes or no")),
+    };
+    Ok(DepthRow {
+        sop_instance_uid: raw.sop_instance_uid,
+        beam_number: raw.beam_number,
+        depth_cm: raw.depth_cm,
+        effective_depth_cm: raw.effective_depth_cm,
+        ssd_cm: raw.ssd_cm,
+        independent,
+    })
+}

@@ -1,0 +1,411 @@
+//! The run itself: survey, then audit in windows of files, each window in
+//! parallel and written in order, so that memory does not grow with the number
+//! of files and the bytes do not depend on the number of threads.
+
+use std::collections::{BTreeSet, HashSet};
+use std::path::Path;
+
+use rayon::prelude::*;
+use thiserror::Error;
+
+use super::fate::{Fate, fates};
+use super::guard::guarded;
+use super::summary::Tally;
+use super::survey::{Seen, Surveyed, survey};
+use crate::audit::{
+    FileEntry, FileOutcome, ModelUse, PlanEntry, PlanInput, Run, RunSummary, audit_plan,
+};
+use crate::beam_model::{DataOrigin, ModelSet};
+use crate::dose::DepthRow;
+use crate::intake::{Contents, Found, read_file};
+use crate::plan::{FileKind, read_plan};
+use crate::quantity::sha256_hex;
+use crate::report::{ReportError, ReportWriter, Written};
+use crate::settings::{Site, SiteSource};
+
+/// Files in one window: enough to keep every thread busy, few enough to hold.
+const WINDOW: usize = 256;
+
+/// A reader's worst case is bounded depth; this leaves room for it on every thread.
+const STACK_BYTES: usize = 8 * 1024 * 1024;
+
+/// What the outputs say about the run besides its results.
+#[derive(Clone, Debug)]
+pub struct RunFacts {
+    /// Version of the program.
+    pub version: String,
+    /// Start, with its zone.
+    pub started: jiff::ZonedDateTime,
+    /// Paths as typed.
+    pub inputs: Vec<String>,
+    /// Options as lines; none may depend on the number of threads.
+    pub options: Vec<String>,
+    /// Where the site settings came from.
+    pub site_source: SiteSource,
+}
+
+/// What to run.
+#[derive(Clone, Copy)]
+pub struct BatchRequest<'a> {
+    /// What was found, in order.
+    pub found: &'a [Found],
+    /// The models.
+    pub models: &'a ModelSet,
+    /// The site's rules.
+    pub site: &'a Site,
+    /// The user's depth table.
+    pub depth_rows: &'a [DepthRow],
+    /// Where the report goes.
+    pub report_folder: &'a Path,
+    /// Threads; `None` for one a core.
+    pub jobs: Option<usize>,
+    /// For the outputs.
+    pub facts: &'a RunFacts,
+    /// The exit status in words, from the counts.
+    pub exit_words: fn(&Tally, &[ModelUse]) -> String,
+}
+
+/// How far a run is.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Progress {
+    /// The survey of this many files begins.
+    SurveyOf(u64),
+    /// One file was surveyed.
+    Surveyed,
+    /// The audit of this many files begins.
+    AuditOf(u64),
+    /// One file is done.
+    Audited,
+}
+
+/// What came of a run.
+#[derive(Clone, Debug)]
+pub struct Outcome {
+    /// Counts.
+    pub tally: Tally,
+    /// The summary that the report carries.
+    pub summary: RunSummary,
+    /// The models as used.
+    pub models: Vec<ModelUse>,
+    /// The files written.
+    pub written: Written,
+}
+
+/// Why a run failed as a whole.
+#[derive(Debug, Error)]
+pub enum BatchError {
+    /// No file is, or may be, a plan.
+    #[error("nothing to audit: none of the {files} files looked at is an RT Plan")]
+    NothingToAudit {
+        /// Files looked at.
+        files: usize,
+    },
+    /// Rows of the depth table that no beam used.
+    #[error(
+        "depth table: no plan of this run has {rows}; correct the table, or leave the rows out"
+    )]
+    UnusedDepthRows {
+        /// The rows, in words.
+        rows: String,
+    },
+    /// The report could not be written.
+    #[error(transparent)]
+    Report(#[from] ReportError),
+    /// The threads could not be started.
+    #[error("the worker threads could not be started")]
+    Threads(#[from] rayon::ThreadPoolBuildError),
+}
+
+/// Runs.
+///
+/// # Errors
+/// When there is nothing to audit, the depth table does not fit, or the report cannot be written.
+pub fn run(
+    request: BatchRequest<'_>,
+    progress: &(dyn Fn(Progress) + Sync),
+) -> Result<Outcome, BatchError> {
+    let mut threads = rayon::ThreadPoolBuilder::new().stack_size(STACK_BYTES);
+    if let Some(jobs) = request.jobs {
+        threads = threads.num_threads(jobs);
+    }
+    threads.build()?.install(|| run_here(request, progress))
+}
+
+fn run_here(
+    request: BatchRequest<'_>,
+    progress: &(dyn Fn(Progress) + Sync),
+) -> Result<Outcome, BatchError> {
+    progress(Progress::SurveyOf(request.found.len() as u64));
+    let files: Vec<Surveyed> = request
+        .found
+        .par_iter()
+        .map(|found| {
+            let surveyed = survey(found);
+            progress(Progress::Surveyed);
+            surveyed
+        })
+        .collect();
+    if !files.iter().any(may_be_plan) {
+        return Err(BatchError::NothingToAudit { files: files.len() });
+    }
+    let fates = fates(&files);
+
+    let day = request.facts.started.date();
+    let models: Vec<ModelUse> = model_uses(request.models, day);
+    let mut run = run_record(request, &models);
+    run.run_id = run_id(&run, &files);
+    let mut writer = ReportWriter::create(request.report_folder, &run)?;
+    let mut tally = Tally::default();
+    let mut used_rows: HashSet<(String, i32)> = HashSet::new();
+
+    progress(Progress::AuditOf(files.len() as u64));
+    for start in (0..files.len()).step_by(WINDOW) {
+        let window = start..files.len().min(start + WINDOW);
+        let results: Vec<(FileEntry, Option<PlanEntry>)> = window
+            .into_par_iter()
+            .map(|index| {
+                let result = one_file(request, &files, index, &fates[index]);
+                progress(Progress::Audited);
+                result
+            })
+            .collect();
+        for (file, plan) in results {
+            tally.file(&file);
+            writer.file(&file)?;
+            if let Some(plan) = plan {
+                note_used_rows(&plan, &mut used_rows);
+                tally.plan(&plan, &models_of(&plan, request.models));
+                writer.plan(&plan)?;
+            }
+        }
+    }
+    refuse_unused_rows(request.depth_rows, &used_rows)?;
+
+    let models: Vec<ModelUse> = models
+        .into_iter()
+        .map(|mut model| {
+            model.used = tally.models_used().contains(&model.name);
+            model
+        })
+        .collect();
+    let summary = tally.summary(
+        &models,
+        request.site.checks.off.clone(),
+        (request.exit_words)(&tally, &models),
+    );
+    let written = writer.finish(&summary)?;
+    Ok(Outcome {
+        tally,
+        summary,
+        models,
+        written,
+    })
+}
+
+/// Whether a file is a plan, or could not be read and so may be one.
+fn may_be_plan(file: &Surveyed) -> bool {
+    match &file.seen {
+        Seen::Unreadable(_) => true,
+        Seen::PassedOver(_) => false,
+        Seen::File { kind, .. } => matches!(kind, FileKind::Plan),
+    }
+}
+
+fn one_file(
+    request: BatchRequest<'_>,
+    files: &[Surveyed],
+    index: usize,
+    fate: &Fate,
+) -> (FileEntry, Option<PlanEntry>) {
+    let file = &files[index];
+    let name = file.path.display().to_string();
+    let entry = |outcome: FileOutcome, message: String| {
+        let (size_bytes, sha256, kind) = match &file.seen {
+            Seen::File {
+                size_bytes,
+                sha256,
+                kind,
+                ..
+            } => (Some(*size_bytes), Some(sha256.clone()), Some(kind.term())),
+            Seen::PassedOver(_) | Seen::Unreadable(_) => (None, None, None),
+        };
+        FileEntry {
+            file: name.clone(),
+            size_bytes,
+            sha256,
+            kind,
+            outcome,
+            message,
+        }
+    };
+    let (kind, sha256, message) = match &file.seen {
+        Seen::PassedOver(reason) => return (entry(FileOutcome::PassedOver, reason.clone()), None),
+        Seen::Unreadable(reason) => return (entry(FileOutcome::Unreadable, reason.clone()), None),
+        Seen::File {
+            kind,
+            sha256,
+            message,
+            ..
+        } => (*kind, sha256, message.clone().unwrap_or_default()),
+    };
+    match fate {
+        Fate::Leave => (entry(outcome_of(kind), message), None),
+        Fate::DuplicateOf(original) => {
+            let original = files[*original].path.display().to_string();
+            let message = "the same plan and the same bytes, audited once".to_owned();
+            (entry(FileOutcome::DuplicateOf(original), message), None)
+        }
+        Fate::Audit { rivals } => match audit_file(request, &file.path, &name, sha256, rivals) {
+            Ok(plan) => (entry(FileOutcome::Audited, message), Some(plan)),
+            Err(reason) => (entry(FileOutcome::Unreadable, reason), None),
+        },
+    }
+}
+
+const fn outcome_of(kind: FileKind) -> FileOutcome {
+    match kind {
+        FileKind::BrachyPlan => FileOutcome::NotApplicable,
+        FileKind::IonPlan => FileOutcome::NotSupported,
+        _ => FileOutcome::PassedOver,
+    }
+}
+
+fn audit_file(
+    request: BatchRequest<'_>,
+    path: &Path,
+    name: &str,
+    sha256: &str,
+    rivals: &[String],
+) -> Result<PlanEntry, String> {
+    let file = read_file(path).map_err(|error| error.to_string())?;
+    let Contents::Whole(bytes) = &file.contents else {
+        return Err("grew while it was being read".to_owned());
+    };
+    if file.sha256 != sha256 {
+        return Err("changed while it was being read; run the audit again".to_owned());
+    }
+    guarded(|| {
+        let plan = read_plan(bytes).map_err(|error| chain(&error))?;
+        let uid = plan.identity.sop_instance_uid.value();
+        let rows: Vec<DepthRow> = request
+            .depth_rows
+            .iter()
+            .filter(|row| Some(&row.sop_instance_uid) == uid)
+            .cloned()
+            .collect();
+        Ok(audit_plan(PlanInput {
+            file: name,
+            sha256,
+            plan: &plan,
+            rivals,
+            models: request.models,
+            site: request.site,
+            depth_rows: &rows,
+        }))
+    })?
+}
+
+/// An error with its causes on one line.
+fn chain(error: &dyn std::error::Error) -> String {
+    let mut text = error.to_string();
+    let mut cause = error.source();
+    while let Some(inner) = cause {
+        text.push_str(": ");
+        text.push_str(&inner.to_string());
+        cause = inner.source();
+    }
+    text
+}
+
+fn models_of(plan: &PlanEntry, models: &ModelSet) -> Vec<String> {
+    let names: BTreeSet<String> = plan
+        .beams
+        .iter()
+        .filter(|beam| beam.calculation.is_calculated())
+        .filter_map(|beam| models.machine_for(beam.machine.as_deref()?))
+        .map(|model| model.name.clone())
+        .collect();
+    names.into_iter().collect()
+}
+
+fn note_used_rows(plan: &PlanEntry, used: &mut HashSet<(String, i32)>) {
+    if let Some(uid) = &plan.sop_instance_uid {
+        let numbers = plan.beams.iter().filter_map(|beam| beam.beam_number);
+        used.extend(numbers.map(|number| (uid.clone(), number)));
+    }
+}
+
+fn refuse_unused_rows(rows: &[DepthRow], used: &HashSet<(String, i32)>) -> Result<(), BatchError> {
+    let unused: Vec<String> = rows
+        .iter()
+        .filter(|row| !used.contains(&(row.sop_instance_uid.clone(), row.beam_number)))
+        .map(|row| format!("beam {} of {}", row.beam_number, row.sop_instance_uid))
+        .collect();
+    if unused.is_empty() {
+        return Ok(());
+    }
+    Err(BatchError::UnusedDepthRows {
+        rows: unused.join(", "),
+    })
+}
+
+fn model_uses(models: &ModelSet, day: jiff::civil::Date) -> Vec<ModelUse> {
+    models
+        .machines
+        .iter()
+        .map(|model| {
+            let provenance = &model.provenance;
+            ModelUse {
+                name: model.name.clone(),
+                serves: model.serves.clone(),
+                fingerprint: model.fingerprint.clone(),
+                origin: match provenance.origin {
+                    DataOrigin::Measured => "measured",
+                    DataOrigin::Published => "published",
+                    DataOrigin::Invented => "invented",
+                },
+                provenance: format!("{}, {}", provenance.by, provenance.on),
+                approval: model.approval.as_ref().map_or_else(
+                    || "not approved".to_owned(),
+                    |approval| {
+                        format!(
+                            "by {} on {}, until {}",
+                            approval.by, approval.on, approval.until
+                        )
+                    },
+                ),
+                approved: model.is_approved_on(day),
+                used: false,
+            }
+        })
+        .collect()
+}
+
+fn run_record(request: BatchRequest<'_>, models: &[ModelUse]) -> Run {
+    let facts = request.facts;
+    Run {
+        run_id: String::new(),
+        version: facts.version.clone(),
+        started: facts.started.to_string(),
+        inputs: facts.inputs.clone(),
+        options: facts.options.clone(),
+        site_source: facts.site_source.clone(),
+        site: request.site.clone(),
+        models: models.to_vec(),
+    }
+}
+
+/// Sixteen hex digits over everything that the outputs depend on.
+fn run_id(run: &Run, files: &[Surveyed]) -> String {
+    let mut text = format!("{run:?}");
+    for file in files {
+        let fingerprint = match &file.seen {
+            Seen::File { sha256, .. } => sha256,
+            Seen::PassedOver(reason) | Seen::Unreadable(reason) => reason,
+        };
+        text.push_str(&format!("\n{} {fingerprint}", file.path.display()));
+    }
+    let mut id = sha256_hex(text.as_bytes());
+    id.truncate(16);
+    id
+}

@@ -1,0 +1,187 @@
+//! `counterfoil audit`.
+
+use std::fs::File;
+use std::io::{self, BufReader, Write};
+use std::path::{Path, PathBuf};
+
+use anyhow::{Context, bail};
+
+use super::args::{AuditArguments, FailOn};
+use super::exit::Exit;
+use super::progress;
+use super::settings::{Effective, effective, load};
+use super::summary::write_summary;
+use crate::audit::ModelUse;
+use crate::batch::{self, BatchRequest, RunFacts, Tally, read_depth_table};
+use crate::dose::DepthRow;
+use crate::intake::{IntakeError, find_files, paths_from_list};
+use crate::quantity::sha256_hex;
+use crate::report::{TargetState, target_state};
+
+/// Runs the main job.
+pub(super) fn run(
+    arguments: AuditArguments,
+    out: &mut dyn Write,
+    err: &mut dyn Write,
+) -> anyhow::Result<Exit> {
+    let effective = effective(&arguments.common)?;
+    if arguments.show_settings {
+        show_settings(&effective, out)?;
+        return Ok(Exit::Within);
+    }
+    let models = load(&effective.models_folder)?;
+    refuse_foreign_folder(&arguments.out, arguments.force)?;
+    let depth_rows = arguments
+        .depths
+        .as_deref()
+        .map(read_depth_table)
+        .transpose()?
+        .unwrap_or_default();
+    let found = find_files(&paths(&arguments)?, &arguments.out)?;
+    let facts = facts(&arguments, &effective, &depth_rows)?;
+    let bar = progress::bar(arguments.quiet);
+    let outcome = batch::run(
+        BatchRequest {
+            found: &found,
+            models: &models,
+            site: &effective.site,
+            depth_rows: &depth_rows,
+            report_folder: &arguments.out,
+            jobs: arguments.jobs.map(usize::from),
+            facts: &facts,
+            exit_words: exit_words(arguments.fail_on),
+        },
+        &|moved| progress::show(&bar, moved),
+    );
+    bar.finish_and_clear();
+    let outcome = outcome?;
+    let exit = Exit::of_audit(&outcome.tally, &outcome.models, arguments.fail_on);
+    if !arguments.quiet {
+        write_summary(out, &outcome, &arguments.out, exit)?;
+    }
+    // A status other than 0 is worth a word even to a script that throws stdout away.
+    if arguments.quiet && exit != Exit::Within {
+        writeln!(err, "counterfoil: {}", exit.meaning())?;
+    }
+    Ok(exit)
+}
+
+fn paths(arguments: &AuditArguments) -> anyhow::Result<Vec<PathBuf>> {
+    let mut paths = Vec::new();
+    for path in &arguments.paths {
+        if path.as_os_str() == "-" {
+            paths.extend(paths_from_list(io::stdin().lock(), "standard input")?);
+        } else {
+            paths.push(path.clone());
+        }
+    }
+    if let Some(list) = &arguments.files_from {
+        let name = list.display().to_string();
+        let file = File::open(list).map_err(|source| IntakeError::List {
+            list: name.clone(),
+            source,
+        })?;
+        paths.extend(paths_from_list(BufReader::new(file), &name)?);
+    }
+    if paths.is_empty() {
+        bail!("nothing to audit: the list of paths is empty");
+    }
+    Ok(paths)
+}
+
+fn refuse_foreign_folder(folder: &Path, force: bool) -> anyhow::Result<()> {
+    if let TargetState::Foreign { example } = target_state(folder)?
+        && !force
+    {
+        bail!(
+            "{} holds something else than an earlier report ({example}); choose another folder with --out, or add --force",
+            folder.display()
+        );
+    }
+    Ok(())
+}
+
+/// What the outputs say about the run. Nothing here may depend on the number of threads.
+fn facts(
+    arguments: &AuditArguments,
+    effective: &Effective,
+    depth_rows: &[DepthRow],
+) -> anyhow::Result<RunFacts> {
+    let mut options = vec![format!("models = {}", effective.models_folder.display())];
+    options.push(format!("fail-on = {}", fail_on_word(arguments.fail_on)));
+    if let Some(file) = &arguments.depths {
+        let bytes = std::fs::read(file).with_context(|| file.display().to_string())?;
+        options.push(format!(
+            "depths = {} ({} rows, sha256 {})",
+            file.display(),
+            depth_rows.len(),
+            sha256_hex(&bytes)
+        ));
+    }
+    let mut inputs: Vec<String> = arguments
+        .paths
+        .iter()
+        .map(|path| path.display().to_string())
+        .collect();
+    if let Some(list) = &arguments.files_from {
+        inputs.push(format!("--files-from {}", list.display()));
+    }
+    Ok(RunFacts {
+        version: env!("CARGO_PKG_VERSION").to_owned(),
+        started: started()?,
+        inputs,
+        options,
+        site_source: effective.site_source.clone(),
+    })
+}
+
+/// The time of the run: now, or SOURCE_DATE_EPOCH (seconds since 1970, UTC) for reports that must be repeatable to the byte.
+fn started() -> anyhow::Result<jiff::ZonedDateTime> {
+    match std::env::var("SOURCE_DATE_EPOCH") {
+        Ok(seconds) => {
+            let seconds: i64 = seconds
+                .trim()
+                .parse()
+                .with_context(|| format!("SOURCE_DATE_EPOCH is {seconds:?}, must be seconds"))?;
+            let instant = jiff::Timestamp::from_second(seconds).context("SOURCE_DATE_EPOCH")?;
+            Ok(instant.to_zoned_datetime(jiff::tz::TimeZone::UTC))
+        }
+        Err(_) => Ok(jiff::ZonedDateTime::now().round(jiff::Unit::Second)?),
+    }
+}
+
+const fn fail_on_word(fail_on: FailOn) -> &'static str {
+    match fail_on {
+        FailOn::Tolerance => "tolerance",
+        FailOn::Action => "action",
+        FailOn::Never => "never",
+    }
+}
+
+fn exit_words(fail_on: FailOn) -> fn(&Tally, &[ModelUse]) -> String {
+    fn words(tally: &Tally, models: &[ModelUse], fail_on: FailOn) -> String {
+        let exit = Exit::of_audit(tally, models, fail_on);
+        format!("{}: {}", exit.status(), exit.meaning())
+    }
+    match fail_on {
+        FailOn::Tolerance => |tally, models| words(tally, models, FailOn::Tolerance),
+        FailOn::Action => |tally, models| words(tally, models, FailOn::Action),
+        FailOn::Never => |tally, models| words(tally, models, FailOn::Never),
+    }
+}
+
+fn show_settings(effective: &Effective, out: &mut dyn Write) -> anyhow::Result<()> {
+    let source = effective.site_source.file.as_ref().map_or_else(
+        || "built-in defaults (no site file)".to_owned(),
+        |file| {
+            format!(
+                "{} (keys that it does not name: built-in defaults)",
+                file.display()
+            )
+        },
+    );
+    writeln!(out, "# site settings: {source}")?;
+    writeln!(out, "# models: {}", effective.models_folder.display())?;
+    write!(out, "{}", toml::to_string_pretty(&effective.site)?)?;
+    Ok(())
+}

@@ -1,0 +1,376 @@
+//! One beam of a plan from end to end: technique, point, geometry, depth,
+//! devices, factors, limits, spread. What the plan alone gives is filled in
+//! also when no model is there or no method covers the beam. Whether the dose
+//! is the planned one is judged in `audit`.
+
+use super::aperture::{collimator_square, mean_openings, point_square, view_at};
+use super::delivery::{Interval, delivering_points, intervals};
+use super::depth::{DepthFindings, DepthQuestion, DepthRow, find_depths};
+use super::limits::outside_method;
+use super::modifier::{Modifiers, bolus, couch, hardware};
+use super::placement::{Placement, place};
+use super::point::choose_point;
+use super::prerequisite::{
+    group_obstacles, meterset_obstacle, photon_model, reading_obstacles, sad_obstacles,
+};
+use super::spread::expected_spread;
+use super::technique::{classify_delivered, technique_obstacles, tilt_obstacles, wedges_stay_out};
+use super::{
+    BeamCalculation, DepthBasis, FactorError, FieldDepth, FieldInput, FieldModel, Form, Method,
+    Obstacle, ObstacleKind, Spread, Squares, Technique, Trace, dose_per_mu,
+};
+use crate::beam_model::{BeamModel, MachineModel, TableKind};
+use crate::plan::{Beam, ControlPoint, FractionGroup, Plan, RadiationType, ReferencedBeam};
+use crate::quantity::tolerance;
+use crate::settings::Site;
+
+/// What the search for a machine's model came to.
+#[derive(Clone, Debug)]
+pub enum ModelAnswer<'a> {
+    /// The model that serves the beam's machine.
+    Found(&'a MachineModel),
+    /// None does.
+    Unknown {
+        /// The names that some model serves.
+        known_names: Vec<&'a str>,
+    },
+}
+
+/// One beam to calculate.
+#[derive(Clone, Debug)]
+pub struct BeamRequest<'a> {
+    /// The plan.
+    pub plan: &'a Plan,
+    /// Item index in `Plan::beams`.
+    pub beam_index: usize,
+    /// Item indices in `Plan::fraction_groups` and in that group's `beams`; `None` for a beam that no group references.
+    pub group: Option<(usize, usize)>,
+    /// The machine's model.
+    pub model: ModelAnswer<'a>,
+    /// The department's settings.
+    pub site: &'a Site,
+    /// The user's depth for this beam.
+    pub depth_row: Option<&'a DepthRow>,
+}
+
+/// Everything that can be worked out about one beam, with every obstacle.
+#[must_use]
+pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
+    let plan = request.plan;
+    let unreadable = Beam::default();
+    let beam = plan.beams.get(request.beam_index).unwrap_or(&unreadable);
+    let delivered = intervals(beam);
+    let technique = classify_delivered(beam, &delivered);
+    let mut result = described(request, beam, &delivered, technique);
+    let group = request
+        .group
+        .and_then(|(group, _)| plan.fraction_groups.get(group));
+    let reference = request
+        .group
+        .zip(group)
+        .and_then(|((_, reference), group)| group.beams.get(reference));
+
+    result.obstacles.extend(reading_obstacles(request));
+    if technique == Technique::Setup {
+        return result;
+    }
+    result
+        .obstacles
+        .extend(technique_obstacles(beam, technique, &delivered));
+    basic_obstacles(request, beam, &delivered, group, reference, &mut result);
+
+    let model = photon_model(request, beam, &mut result);
+    let at = delivered
+        .first()
+        .map(|interval| interval.start)
+        .or(beam.control_points.first());
+    let Some(at) = at else {
+        return result;
+    };
+    let placement = place_point(request, beam, at, reference, technique, &mut result);
+    let depths = depths_of(
+        request,
+        beam,
+        reference,
+        &delivered,
+        &placement,
+        &mut result,
+    );
+    let devices = devices_of(beam, at, technique, model, &depths, &mut result);
+    let rectangle = matches!(technique, Technique::Static | Technique::Wedge);
+    if let (true, Some(model), Some([x_cm, y_cm])) = (rectangle, model, openings(at)) {
+        result.squares = Some(Squares {
+            collimator: collimator_square(x_cm, y_cm, model.upper_jaws, model.beam.exchange_k),
+            phantom: placement.ray.map(|ray| point_square(x_cm, y_cm, ray)),
+        });
+    }
+    if technique == Technique::Static
+        && beam.radiation.value() == Some(&RadiationType::Photon)
+        && devices.uncovered.is_empty()
+        && let Some(model) = model
+    {
+        calculate(
+            request,
+            at,
+            model,
+            &placement,
+            &depths,
+            &devices,
+            &mut result,
+        );
+    }
+    result.obstacles.extend(devices.uncovered);
+    result.remarks.extend(devices.remarks);
+    result
+}
+
+/// What the plan says of the beam as such.
+fn described(
+    request: &BeamRequest<'_>,
+    beam: &Beam,
+    delivered: &[Interval<'_>],
+    technique: Technique,
+) -> BeamCalculation {
+    let first = delivered
+        .first()
+        .map(|interval| interval.start)
+        .or(beam.control_points.first());
+    let last = delivered
+        .last()
+        .map(|interval| interval.end)
+        .or(beam.control_points.last());
+    let [x_cm, y_cm] = mean_openings(beam, delivered);
+    BeamCalculation {
+        beam_index: request.beam_index,
+        group_index: request.group.map(|(group, _)| group),
+        reference_index: request.group.map(|(_, reference)| reference),
+        technique,
+        gantry_deg: first.and_then(|point| point.gantry_deg.get()),
+        gantry_end_deg: last.and_then(|point| point.gantry_deg.get()),
+        collimator_deg: first.and_then(|point| point.collimator_deg.get()),
+        couch_deg: first.and_then(|point| point.couch_deg.get()),
+        x_cm,
+        y_cm,
+        squares: None,
+        point: None,
+        depths: Vec::new(),
+        plan_ssd_cm: first.and_then(|point| point.ssd_cm.get()),
+        trace: None,
+        method: None,
+        spread: None,
+        obstacles: Vec::new(),
+        remarks: Vec::new(),
+        view: first.map(|point| view_at(beam, point)).unwrap_or_default(),
+    }
+}
+
+fn basic_obstacles(
+    request: &BeamRequest<'_>,
+    beam: &Beam,
+    delivered: &[Interval<'_>],
+    group: Option<&FractionGroup>,
+    reference: Option<&ReferencedBeam>,
+    result: &mut BeamCalculation,
+) {
+    result
+        .obstacles
+        .extend(group_obstacles(request, group, reference));
+    result.obstacles.extend(meterset_obstacle(beam, reference));
+    result.obstacles.extend(sad_obstacles(beam));
+    if delivered.is_empty() {
+        result.obstacles.push(Obstacle {
+            kind: ObstacleKind::Reading,
+            message: "no meterset accrues between the beam's control points: what they deliver is not stated".to_owned(),
+        });
+    }
+    if beam.dosimeter_unit.is_absent() {
+        result.remarks.push(
+            "Primary Dosimeter Unit (300A,00B3) is not stated; the meterset is taken as MU"
+                .to_owned(),
+        );
+    }
+    if beam.energy.fluence_mode.is_absent()
+        && beam.radiation.value() == Some(&RadiationType::Photon)
+    {
+        result.remarks.push(
+            "the fluence mode is not stated; the beam is taken as a flattened one".to_owned(),
+        );
+    }
+    if wedges_stay_out(beam, result.technique) {
+        result
+            .remarks
+            .push("the beam declares a wedge that is never in: it is open".to_owned());
+    }
+}
+
+fn place_point(
+    request: &BeamRequest<'_>,
+    beam: &Beam,
+    at: &ControlPoint,
+    reference: Option<&ReferencedBeam>,
+    technique: Technique,
+    result: &mut BeamCalculation,
+) -> Placement {
+    let choice = choose_point(request.plan, beam, reference, &request.site.point);
+    result.obstacles.extend(choice.obstacles);
+    result.remarks.extend(choice.remarks);
+    result.obstacles.extend(tilt_obstacles(at));
+    let placement = place(request.plan, beam, at, choice.chosen, technique);
+    result.obstacles.extend(placement.obstacles.iter().cloned());
+    result.remarks.extend(placement.remarks.iter().cloned());
+    result.view.point_cm = placement.ray.map(|ray| ray.projected_cm);
+    result.point.clone_from(&placement.point);
+    placement
+}
+
+fn depths_of(
+    request: &BeamRequest<'_>,
+    beam: &Beam,
+    reference: Option<&ReferencedBeam>,
+    delivered: &[Interval<'_>],
+    placement: &Placement,
+    result: &mut BeamCalculation,
+) -> DepthFindings {
+    let found = find_depths(&DepthQuestion {
+        plan: request.plan,
+        beam,
+        reference,
+        point: placement.point.as_ref(),
+        ray: placement.ray,
+        delivering: &delivering_points(delivered),
+        row: request.depth_row,
+        limit_cm: request.site.technical.depth_disagreement_mm / 10.0,
+    });
+    result.depths.clone_from(&found.candidates);
+    result.obstacles.extend(found.obstacles.iter().cloned());
+    result.remarks.extend(found.remarks.iter().cloned());
+    found
+}
+
+fn devices_of(
+    beam: &Beam,
+    at: &ControlPoint,
+    technique: Technique,
+    model: Option<FieldModel<'_>>,
+    depths: &DepthFindings,
+    result: &mut BeamCalculation,
+) -> Modifiers {
+    if technique == Technique::Electron {
+        return Modifiers::default();
+    }
+    let mut devices = hardware(beam, model.map(|model| model.beam));
+    if let (Some(model), Some(gantry_deg)) = (model, at.gantry_deg.get())
+        && technique != Technique::Arc
+    {
+        let couch_deg = at.couch_deg.get().unwrap_or_default();
+        couch(model.beam, gantry_deg, couch_deg, depths, &mut devices);
+    }
+    let (obstacle, remark) = bolus(beam, depths);
+    result.obstacles.extend(obstacle);
+    result.remarks.extend(remark);
+    devices
+}
+
+fn openings(at: &ControlPoint) -> Option<[f64; 2]> {
+    let (x_cm, y_cm) = (at.jaws_x_cm.get()?, at.jaws_y_cm.get()?);
+    let sides = [x_cm[1] - x_cm[0], y_cm[1] - y_cm[0]];
+    sides
+        .iter()
+        .all(|&side_cm| side_cm > tolerance::POSITION_CM)
+        .then_some(sides)
+}
+
+fn calculate(
+    request: &BeamRequest<'_>,
+    at: &ControlPoint,
+    model: FieldModel<'_>,
+    placement: &Placement,
+    depths: &DepthFindings,
+    devices: &Modifiers,
+    result: &mut BeamCalculation,
+) {
+    let (Some(jaws_x_cm), Some(jaws_y_cm)) = (at.jaws_x_cm.get(), at.jaws_y_cm.get()) else {
+        result.obstacles.push(Obstacle {
+            kind: ObstacleKind::Reading,
+            message: "neither jaws nor leaves limit the field on one axis: its size is not given"
+                .to_owned(),
+        });
+        return;
+    };
+    if openings(at).is_none() {
+        result.obstacles.push(Obstacle {
+            kind: ObstacleKind::Reading,
+            message: "the jaw opening is closed or inverted".to_owned(),
+        });
+        return;
+    }
+    let (Some(ray), Some(depth)) = (placement.ray, depths.candidates.first()) else {
+        return;
+    };
+    let ssd_form = depth.perpendicular_cm.and(depth.ssd_cm).filter(|&ssd_cm| {
+        matches!(model.beam.table_kind, TableKind::Pdd { .. })
+            && ssd_cm > 0.0
+            && (placement.fixed_ssd || ssd_cm >= ray.sad_cm - tolerance::POSITION_CM)
+    });
+    let field = FieldInput {
+        model: Some(model),
+        jaws_x_cm,
+        jaws_y_cm,
+        ray,
+        depth: FieldDepth {
+            perpendicular_cm: depth.perpendicular_cm,
+            effective_cm: depth.effective_cm,
+            source: depth.source.clone(),
+        },
+        form: ssd_form.map_or(Form::Isocentric, |ssd_cm| Form::FixedSsd { ssd_cm }),
+        tray: devices.tray.clone(),
+        couch: devices.couch,
+        reference: None,
+        typed: Vec::new(),
+    };
+    let site = request.site;
+    result.obstacles.extend(outside_method(
+        &field,
+        Some(model.beam.d_max_cm),
+        site.technical.edge_margin_cm,
+    ));
+    match dose_per_mu(&field) {
+        Ok(trace) => {
+            result.spread = Some(spread_of(&field, model.beam, depth.basis, site));
+            note_result(trace, result);
+        }
+        Err(error) => result.obstacles.push(factor_obstacle(&error)),
+    }
+}
+
+fn note_result(trace: Trace, result: &mut BeamCalculation) {
+    result.trace = Some(trace);
+    result.method = Some(Method::Factors);
+}
+
+fn factor_obstacle(error: &FactorError) -> Obstacle {
+    match error {
+        FactorError::OutOfRange { .. } => Obstacle {
+            kind: ObstacleKind::TableRange,
+            message: format!("outside the method's range: {error}"),
+        },
+        FactorError::MissingFactor { .. } => Obstacle {
+            kind: ObstacleKind::Model,
+            message: error.to_string(),
+        },
+        FactorError::Unusable { .. } => Obstacle {
+            kind: ObstacleKind::Reading,
+            message: error.to_string(),
+        },
+    }
+}
+
+fn spread_of(field: &FieldInput<'_>, beam: &BeamModel, basis: DepthBasis, site: &Site) -> Spread {
+    let sigma = &site.depth_uncertainty;
+    let (sigma_mm, name) = match basis {
+        DepthBasis::Table => (sigma.table_mm, "the depth table"),
+        DepthBasis::Plan => (sigma.plan_mm, "the plan's point depth"),
+        DepthBasis::Ssd => (sigma.ssd_mm, "SSD and a flat surface"),
+    };
+    expected_spread(field, beam, sigma_mm / 10.0, name)
+}

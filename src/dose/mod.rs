@@ -1,0 +1,41 @@
+//! Plan, model and point in; a trace of factors out. No I/O, no logging, no
+//! rounding. What a deviation means is judged in `audit`.
+//!
+//! [`calculate_beam`] does one beam of a plan; [`dose_per_mu`] one field from
+//! plain numbers, with a model's tables or typed factors.
+
+mod aperture;
+mod beam;
+mod delivery;
+mod depth;
+mod factors;
+pub mod geometry;
+mod limits;
+mod mayneord;
+mod modifier;
+mod outcome;
+mod placement;
+mod point;
+mod prerequisite;
+mod ray;
+mod spread;
+mod technique;
+mod text;
+mod trace;
+
+pub use aperture::{collimator_square, point_square};
+pub use beam::{BeamRequest, ModelAnswer, calculate_beam};
+pub use depth::DepthRow;
+pub use factors::{
+    FactorError, FieldDepth, FieldInput, FieldModel, Form, Tray, Typed, dose_per_mu,
+};
+pub use limits::outside_method;
+pub use mayneord::{Mayneord, mayneord};
+pub use outcome::{
+    BeamCalculation, BeamView, BlockOutline, DepthBasis, DepthCandidate, DosePoint, LeafOpening,
+    Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares, Technique,
+};
+pub use ray::RayPoint;
+pub use spread::expected_spread;
+pub use technique::classify;
+pub use trace::{Factor, FactorName, Input, Trace};

@@ -1,6 +1,7 @@
 //! Beam models: what the loader accepts and refuses, the TG-71 data set, the
 //! shipped models, the published kernel, interpolation.
 
+mod damaged;
 mod interpolation;
 mod kernel;
 mod loader;

@@ -23,8 +23,12 @@ pub(super) enum Leaves {
 
 /// What the leaves do at one control point.
 pub(super) fn leaves_at(beam: &Beam, point: &ControlPoint) -> Leaves {
-    if point.leaves.is_empty() {
-        return Leaves::Outside;
+    let unplaced = beam.devices.iter().any(|device| {
+        device.kind.leaf_axis().is_some()
+            && !point.leaves.iter().any(|bank| bank.kind == device.kind)
+    });
+    if unplaced {
+        return Leaves::Unknown;
     }
     let mut answer = Leaves::Outside;
     for bank in &point.leaves {

@@ -32,7 +32,7 @@ pub enum ModelAnswer<'a> {
     /// None does.
     Unknown {
         /// The names that some model serves.
-        known_names: Vec<String>,
+        known_names: Vec<&'a str>,
     },
 }
 
@@ -320,6 +320,7 @@ fn calculate(
         depth: FieldDepth {
             perpendicular_cm: depth.perpendicular_cm,
             effective_cm: depth.effective_cm,
+            source: depth.source.clone(),
         },
         form: ssd_form.map_or(Form::Isocentric, |ssd_cm| Form::FixedSsd { ssd_cm }),
         tray: devices.tray.clone(),

@@ -115,3 +115,43 @@ fn same_jaws(a: &Given<[f64; 2]>, b: &Given<[f64; 2]>) -> bool {
 fn same_place(a_cm: f64, b_cm: f64) -> bool {
     (a_cm - b_cm).abs() <= tolerance::POSITION_CM
 }
+
+#[cfg(test)]
+mod tests {
+    use super::{intervals, turn_between_deg};
+    use crate::plan::{Beam, ControlPoint};
+    use crate::quantity::Given;
+
+    fn beam(weights: &[Option<f64>]) -> Beam {
+        Beam {
+            control_points: weights
+                .iter()
+                .map(|weight| ControlPoint {
+                    cumulative_weight: weight.map_or(Given::Absent, Given::stated),
+                    ..ControlPoint::default()
+                })
+                .collect(),
+            ..Beam::default()
+        }
+    }
+
+    #[test]
+    fn verify_turns_go_the_short_way() {
+        assert!((turn_between_deg(359.0, 1.0) - 2.0).abs() < 1e-12);
+        assert!((turn_between_deg(-90.0, 270.0)).abs() < 1e-12);
+        assert!((turn_between_deg(0.0, 180.0) - 180.0).abs() < 1e-12);
+    }
+
+    #[test]
+    fn verify_intervals_that_deliver() {
+        let count = |weights: &[Option<f64>]| intervals(&beam(weights)).len();
+        assert_eq!(
+            count(&[Some(0.0), Some(0.0), Some(50.0), Some(50.0), Some(100.0)]),
+            2
+        );
+        assert_eq!(count(&[Some(0.0), Some(0.0)]), 0);
+        assert_eq!(count(&[Some(0.0)]), 0);
+        // Not stated: counts as delivering.
+        assert_eq!(count(&[None, None, None]), 2);
+    }
+}

@@ -9,7 +9,7 @@
 //! Surface Distance (300A,0130) holds on the axis. With a flat surface
 //! perpendicular to the axis, depth perpendicular = depth along the ray * cos(ray, axis).
 
-use super::{DepthBasis, DepthCandidate, DosePoint, Obstacle, ObstacleKind, RayPoint};
+use super::{DepthBasis, DepthCandidate, DosePoint, Obstacle, ObstacleKind, PointBasis, RayPoint};
 use crate::plan::{Beam, ControlPoint, Plan, PointDepth, PointDepthPlace, ReferencedBeam};
 use crate::quantity::{Given, tolerance};
 
@@ -98,7 +98,8 @@ pub(super) fn find_depths(question: &DepthQuestion<'_>) -> DepthFindings {
     }
     from_plan(question, &mut found);
     from_ssd(question, &mut found);
-    if found.candidates.is_empty() {
+    // Without a ray something else is missing already, and the caller says what.
+    if found.candidates.is_empty() && question.ray.is_some() {
         found.object(
             "the depth of the point is not known: the plan gives neither a point depth nor a usable SSD; a row in the depth table would give it"
                 .to_owned(),
@@ -217,7 +218,8 @@ fn sets_of_plan<'a>(question: &DepthQuestion<'a>, found: &mut DepthFindings) -> 
     sets
 }
 
-/// Whether a control point's dose reference is at the point in question.
+/// Whether a control point's dose reference is at the point in question: by its coordinates, or, when it has
+/// none, because it is the one that the referenced beam names for the dose at its specification point.
 fn belongs(question: &DepthQuestion<'_>, number: Option<i32>) -> bool {
     let (Some(number), Some(point)) = (number, question.point) else {
         return false;
@@ -227,8 +229,15 @@ fn belongs(question: &DepthQuestion<'_>, number: Option<i32>) -> bool {
         .dose_references
         .iter()
         .filter(|reference| reference.number.value() == Some(&number))
-        .filter_map(|reference| reference.point.get())
-        .any(|at| at.distance_cm(point.patient) <= tolerance::SHARED_POINT_CM)
+        .any(|reference| match reference.point.get() {
+            Some(at) => at.distance_cm(point.patient) <= tolerance::SHARED_POINT_CM,
+            None => {
+                let named = question
+                    .reference
+                    .and_then(|beam| beam.dose_reference_uid.value());
+                point.basis == PointBasis::Beam && named.is_some() && named == reference.uid.value()
+            }
+        })
 }
 
 fn from_plan(question: &DepthQuestion<'_>, found: &mut DepthFindings) {

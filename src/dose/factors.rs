@@ -41,7 +41,7 @@ pub struct FieldModel<'a> {
 pub enum Form {
     /// TPR and the point's own distance.
     Isocentric,
-    /// Depth dose for a surface at this distance on the axis; the point's plane is at SSD + d.
+    /// Depth dose for a surface at this distance on the axis; the point's plane is at SSD + d = SPD.
     FixedSsd {
         /// SSD on the axis, cm, above 0.
         ssd_cm: f64,
@@ -49,12 +49,14 @@ pub enum Form {
 }
 
 /// Depth of the point.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct FieldDepth {
     /// Geometric, perpendicular to a flat surface, cm; `None` when only a radiological depth is known.
     pub perpendicular_cm: Option<f64>,
     /// Radiological, along the ray, cm; equals the geometric one along the ray when nothing else is known.
     pub effective_cm: f64,
+    /// On what it stands, for the trace.
+    pub source: String,
 }
 
 /// A tray in the beam.
@@ -219,6 +221,15 @@ impl FieldInput<'_> {
             .into_iter()
             .flatten()
             .find(|(_, value)| !(value.is_finite() && *value >= 0.0));
+        if let (Form::FixedSsd { ssd_cm }, Some(depth_cm)) =
+            (self.form, self.depth.perpendicular_cm)
+            && (self.ray.spd_cm - ssd_cm - depth_cm).abs() > tolerance::POSITION_CM
+        {
+            return Err(FactorError::Unusable {
+                name: "SPD - SSD - d, cm, which must be 0,",
+                value: self.ray.spd_cm - ssd_cm - depth_cm,
+            });
+        }
         match not_positive.or(negative) {
             Some((name, value)) => Err(FactorError::Unusable { name, value }),
             None => Ok(()),
@@ -246,6 +257,13 @@ pub fn dose_per_mu(field: &FieldInput<'_>) -> Result<Trace, FactorError> {
             factors.push(tpr_factor(field, s_d)?);
         }
         Form::FixedSsd { ssd_cm } => {
+            inputs.push(Input {
+                name: "source-surface distance on the axis",
+                symbol: "SSD",
+                value: ssd_cm,
+                unit: "cm",
+                source: "the surface of the SSD form".to_owned(),
+            });
             let reference = field.reference(FactorName::InverseSquare)?;
             let at_d0 = s_d.at_reference_depth(ssd_cm, reference.depth_cm, field.ray.spd_cm);
             inputs.push(Input {
@@ -321,7 +339,11 @@ fn geometry_inputs(field: &FieldInput<'_>) -> Vec<Input> {
             symbol: "SPD",
             value: ray.spd_cm,
             unit: "cm",
-            source: "geometry".to_owned(),
+            source: format!(
+                "SAD {} cm, the point {} cm nearer the source than the isocentre",
+                number(ray.sad_cm),
+                number(ray.sad_cm - ray.spd_cm)
+            ),
         },
         Input {
             name: "equivalent square at the point's plane",
@@ -353,7 +375,7 @@ fn geometry_inputs(field: &FieldInput<'_>) -> Vec<Input> {
             symbol: "d",
             value: depth_cm,
             unit: "cm",
-            source: "geometry".to_owned(),
+            source: field.depth.source.clone(),
         });
     }
     inputs.push(Input {
@@ -361,7 +383,10 @@ fn geometry_inputs(field: &FieldInput<'_>) -> Vec<Input> {
         symbol: "d_eff",
         value: field.depth.effective_cm,
         unit: "cm",
-        source: "radiological where known, else geometric".to_owned(),
+        source: format!(
+            "{} (radiological where known, else geometric)",
+            field.depth.source
+        ),
     });
     inputs
 }

@@ -252,11 +252,11 @@ pub struct LeafOpening {
 /// What the beam's-eye view draws, cm at the isocentre plane in the collimator system.
 #[derive(Clone, Debug, Default, PartialEq, Serialize)]
 pub struct BeamView {
-    /// X jaws of the first control point.
+    /// X jaws of the control point where dose begins.
     pub jaws_x_cm: Option<[f64; 2]>,
-    /// Y jaws of the first control point.
+    /// Y jaws of the control point where dose begins.
     pub jaws_y_cm: Option<[f64; 2]>,
-    /// Leaf openings of the first control point, by bank.
+    /// Leaf openings of the control point where dose begins, by bank.
     pub leaf_banks: Vec<Vec<LeafOpening>>,
     /// Block outlines, with whether each shields the inside.
     pub blocks: Vec<BlockOutline>,
@@ -284,9 +284,9 @@ pub struct BeamCalculation {
     pub reference_index: Option<usize>,
     /// Technique.
     pub technique: Technique,
-    /// Gantry angle of the first control point, degrees.
+    /// Gantry angle where dose begins, degrees.
     pub gantry_deg: Option<f64>,
-    /// Gantry angle of the last control point, degrees.
+    /// Gantry angle where dose ends, degrees.
     pub gantry_end_deg: Option<f64>,
     /// Collimator angle, degrees.
     pub collimator_deg: Option<f64>,
@@ -302,7 +302,7 @@ pub struct BeamCalculation {
     pub point: Option<DosePoint>,
     /// Every depth that could be used, best basis first: the first is the one used.
     pub depths: Vec<DepthCandidate>,
-    /// SSD of the first control point as the plan states it, cm.
+    /// SSD where dose begins as the plan states it, cm.
     pub plan_ssd_cm: Option<f64>,
     /// The dose per MU, when it could be calculated (also outside the method's range).
     pub trace: Option<Trace>,

@@ -7,7 +7,7 @@ use super::delivery::{
     Interval, delivering_points, intervals, same_angle, same_aperture, same_point,
 };
 use super::{Obstacle, ObstacleKind, Technique};
-use crate::plan::{Beam, ControlPoint, DeliveryType, DeviceKind, RadiationType};
+use crate::plan::{Beam, ControlPoint, DeviceKind, RadiationType};
 use crate::quantity::{Given, tolerance};
 
 /// The beam's technique. A beam whose apertures or wedge positions are not
@@ -18,7 +18,7 @@ pub fn classify(beam: &Beam) -> Technique {
 }
 
 pub(super) fn classify_delivered(beam: &Beam, intervals: &[Interval<'_>]) -> Technique {
-    if is_setup(beam) {
+    if !beam.is_treatment() {
         return Technique::Setup;
     }
     if beam.radiation.value() == Some(&RadiationType::Electron) {
@@ -55,19 +55,6 @@ pub(super) fn classify_delivered(beam: &Beam, intervals: &[Interval<'_>]) -> Tec
         Some(Leaves::Cut | Leaves::Unknown) => Technique::Mlc,
         Some(Leaves::Outside) | None => Technique::Static,
     }
-}
-
-/// Whether the beam is not delivered for treatment.
-fn is_setup(beam: &Beam) -> bool {
-    matches!(
-        beam.delivery.value(),
-        Some(
-            DeliveryType::Setup
-                | DeliveryType::OpenPortfilm
-                | DeliveryType::TrmtPortfilm
-                | DeliveryType::Verification
-        )
-    )
 }
 
 fn turns(start: &Given<f64>, end: &Given<f64>, direction: &Given<String>) -> bool {

@@ -11,3 +11,16 @@ pub(super) fn number(value: f64) -> String {
         text.to_owned()
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::number;
+
+    #[test]
+    fn verify_numbers_are_short() {
+        assert_eq!(number(10.0), "10");
+        assert_eq!(number(0.98765), "0.9877");
+        assert_eq!(number(-0.000_01), "0");
+        assert_eq!(number(100.5), "100.5");
+    }
+}

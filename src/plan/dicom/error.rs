@@ -67,7 +67,7 @@ pub enum ReadError {
     },
     /// The file ends inside a value, an item or a sequence.
     #[error(
-        "file truncated: {place} at byte {offset} needs {needed_bytes} more bytes and {left_bytes} are left; send the plan again"
+        "file truncated: {place} at byte {offset} needs {needed_bytes} bytes where {left_bytes} are left; send the plan again"
     )]
     Truncated {
         /// Attribute path with tag.

@@ -125,10 +125,7 @@ pub(super) fn kind_of_class(uid: &str) -> (FileKind, Option<&'static str>) {
 pub fn identify(bytes: &[u8]) -> Identified {
     let envelope = open_envelope(bytes);
     let mut seen = Seen::default();
-    let message = match look(bytes, &envelope, &mut seen) {
-        Ok(()) => None,
-        Err(error) => Some(error),
-    };
+    let message = look(bytes, &envelope, &mut seen).err();
     let sop_class_uid = seen.sop_class_uid.or(envelope.sop_class_uid);
     let sop_instance_uid = seen.sop_instance_uid.or(envelope.sop_instance_uid);
     let (kind, reason) = match sop_class_uid.as_deref() {

@@ -178,7 +178,7 @@ impl<'a> Walk<'a> {
         }
         let unit_bytes = unit_bytes(vr);
         let length_bytes = end - start;
-        if length_bytes % unit_bytes != 0 {
+        if !length_bytes.is_multiple_of(unit_bytes) {
             return Err(ReadError::OddLength {
                 place: self.place(tag),
                 offset: start,
@@ -406,7 +406,7 @@ impl<'a> Walk<'a> {
     }
 
     fn note_irregular(&mut self, tag: Tag, set: &DataSet<'a>) {
-        if self.irregularities.len() < MAX_IRREGULARITIES && tag.group() % 2 == 0 {
+        if self.irregularities.len() < MAX_IRREGULARITIES && tag.group().is_multiple_of(2) {
             let place = self.place(tag);
             let twice = set.elements.iter().any(|other| other.tag == tag);
             self.irregularities.push(if twice {

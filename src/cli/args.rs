@@ -24,7 +24,7 @@ pub(super) enum Command {
     Read(ReadArguments),
     /// Calculate one field typed by hand, every factor shown
     #[command(allow_negative_numbers = true, after_help = FIELD_HELP)]
-    Field(FieldArguments),
+    Field(Box<FieldArguments>),
     /// List the plan checks, each with its text
     Checks,
 }

@@ -308,6 +308,7 @@ fn field_input<'a>(
             effective_cm: arguments
                 .effective_depth
                 .unwrap_or(arguments.depth / ray.cosine()),
+            source: "typed".to_owned(),
         },
         form,
         tray: None,

@@ -41,7 +41,7 @@ fn run(arguments: Arguments, out: &mut dyn Write, err: &mut dyn Write) -> Exit {
     let result = match arguments.command {
         Command::Audit(audit) => audit::run(audit, out, err),
         Command::Read(read) => read::run(read, out),
-        Command::Field(field) => field::run(field, out),
+        Command::Field(field) => field::run(*field, out),
         Command::Checks => checks::run(out),
     };
     result.unwrap_or_else(|error| {

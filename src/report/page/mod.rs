@@ -181,7 +181,12 @@ const fn cause(kind: Option<ObstacleKind>) -> &'static str {
         Some(ObstacleKind::Point) => "no dose point",
         Some(ObstacleKind::Depth) => "no depth",
         Some(ObstacleKind::PlannedDose) => "no planned dose to compare with",
-        Some(ObstacleKind::OutsideMethod) => "outside the method's range",
+        Some(
+            ObstacleKind::BuildUp
+            | ObstacleKind::FieldEdge
+            | ObstacleKind::UnderDevice
+            | ObstacleKind::TableRange,
+        ) => "outside the method's range",
         None => "other, see the beam's reasons",
     }
 }

@@ -304,7 +304,7 @@ pub(crate) fn outside_beam(number: i32) -> BeamEntry {
     entry.judgement = None;
     entry.reasons = vec![message.clone()];
     entry.calculation.obstacles = vec![Obstacle {
-        kind: ObstacleKind::OutsideMethod,
+        kind: ObstacleKind::BuildUp,
         message,
     }];
     entry.calculation.view.point_cm = Some([4.6, 0.0]);

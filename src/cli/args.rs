@@ -25,7 +25,7 @@ pub(super) enum Command {
     /// Calculate one field typed by hand, every factor shown
     #[command(allow_negative_numbers = true, after_help = FIELD_HELP)]
     Field(Box<FieldArguments>),
-    /// A beam model: its consistency, PDD to TPR and back
+    /// A beam model: its consistency, its curves, PDD to TPR and back
     #[command(subcommand)]
     Model(ModelCommand),
     /// List the plan checks, each with its text
@@ -104,6 +104,8 @@ pub(super) struct ReadArguments {
 pub(super) enum ModelCommand {
     /// Check models: shape, ranges, plausibility, proof; status 1 when a person has to look
     Check(ModelCheckArguments),
+    /// Write a model's curves and single numbers as one page
+    Show(ModelShowArguments),
     /// Print a depth table worked out from the measured one, as CSV
     Derive(DeriveArguments),
 }
@@ -115,6 +117,18 @@ pub(super) struct ModelCheckArguments {
     pub(super) folders: Vec<PathBuf>,
     #[command(flatten)]
     pub(super) common: CommonArguments,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct ModelShowArguments {
+    /// Name of the model's folder, or of a treatment machine that it serves
+    #[arg(value_name = "NAME")]
+    pub(super) model: String,
+    #[command(flatten)]
+    pub(super) common: CommonArguments,
+    /// The page to write [default: counterfoil-model-NAME.html]
+    #[arg(long, value_name = "FILE")]
+    pub(super) out: Option<PathBuf>,
 }
 
 #[derive(Debug, Args)]

@@ -14,6 +14,7 @@ use super::settings::{Effective, effective, load};
 use super::summary::write_summary;
 use crate::audit::ModelUse;
 use crate::batch::{self, BatchRequest, RunFacts, Tally, read_depth_table};
+use crate::beam_model::{ModelSet, ModelSeverity, check_machine};
 use crate::dose::DepthRow;
 use crate::intake::{IntakeError, find_files, paths_from_list};
 use crate::quantity::sha256_hex;
@@ -31,6 +32,7 @@ pub(super) fn run(
         return Ok(Exit::Within);
     }
     let models = load(&effective.models_folder)?;
+    refuse_faulty_models(&models)?;
     refuse_foreign_folder(&arguments.out, arguments.force)?;
     let depth_rows = arguments
         .depths
@@ -88,6 +90,23 @@ fn paths(arguments: &AuditArguments) -> anyhow::Result<Vec<PathBuf>> {
         bail!("nothing to audit: the list of paths is empty");
     }
     Ok(paths)
+}
+
+/// A model that is certainly wrong would make wrong verdicts.
+fn refuse_faulty_models(models: &ModelSet) -> anyhow::Result<()> {
+    let today = started()?.date();
+    for machine in &models.machines {
+        let error = check_machine(machine, today)
+            .into_iter()
+            .find(|finding| finding.severity == ModelSeverity::Error);
+        if let Some(error) = error {
+            bail!(
+                "beam model {}: {error}; `counterfoil model check` tells all, correct the model or take it out",
+                machine.name
+            );
+        }
+    }
+    Ok(())
 }
 
 fn refuse_foreign_folder(folder: &Path, force: bool) -> anyhow::Result<()> {

@@ -5,7 +5,9 @@ use std::path::PathBuf;
 
 use anyhow::{Context, bail};
 
-use super::args::{DeriveArguments, DerivedKind, ModelCheckArguments, ModelCommand};
+use super::args::{
+    DeriveArguments, DerivedKind, ModelCheckArguments, ModelCommand, ModelShowArguments,
+};
 use super::clock::started;
 use super::exit::Exit;
 use super::settings::{effective, load};
@@ -14,11 +16,13 @@ use crate::beam_model::{
     derive_table, load_models,
 };
 use crate::dose::prove;
+use crate::report::{model_check_text, model_page};
 
 /// Runs one of the model commands.
 pub(super) fn run(command: ModelCommand, out: &mut dyn Write) -> anyhow::Result<Exit> {
     match command {
         ModelCommand::Check(arguments) => check(arguments, out),
+        ModelCommand::Show(arguments) => show(arguments, out),
         ModelCommand::Derive(arguments) => derive(arguments, out),
     }
 }
@@ -28,22 +32,13 @@ fn check(arguments: ModelCheckArguments, out: &mut dyn Write) -> anyhow::Result<
     let today = started()?.date();
     let mut worst = ModelSeverity::Note;
     for machine in sets.iter().flat_map(|set| &set.machines) {
-        writeln!(
-            out,
-            "{} (serves {}; {} data)",
-            machine.name,
-            machine.serves.join(", "),
-            origin(machine)
-        )?;
         let findings = check_machine(machine, today);
-        for finding in &findings {
-            worst = worst.max(finding.severity);
-            writeln!(out, "  {finding}")?;
-        }
+        worst = findings
+            .iter()
+            .map(|finding| finding.severity)
+            .fold(worst, Ord::max);
+        write!(out, "{}", model_check_text(machine, &findings))?;
         write_proof(machine, &mut worst, out)?;
-        if findings.is_empty() {
-            writeln!(out, "  nothing to note")?;
-        }
     }
     Ok(match worst {
         ModelSeverity::Note => Exit::Within,
@@ -90,15 +85,38 @@ fn write_proof(
                 }
             }
         }
-        if beam.proof.is_empty() {
-            writeln!(
-                out,
-                "  {} proof: no measured point stands in the model",
-                beam.label
-            )?;
-        }
     }
     Ok(())
+}
+
+fn show(arguments: ModelShowArguments, out: &mut dyn Write) -> anyhow::Result<Exit> {
+    let models = load(&effective(&arguments.common)?.models_folder)?;
+    let today = started()?.date();
+    let machine = models
+        .machines
+        .iter()
+        .find(|machine| machine.name == arguments.model)
+        .or_else(|| models.machine_for(&arguments.model))
+        .with_context(|| {
+            let names: Vec<&str> = models
+                .machines
+                .iter()
+                .map(|machine| machine.name.as_str())
+                .collect();
+            format!(
+                "no model is called {}; there are {}",
+                arguments.model,
+                names.join(", ")
+            )
+        })?;
+    let findings = check_machine(machine, today);
+    let page = model_page(machine, &findings, today, env!("CARGO_PKG_VERSION"))?;
+    let file = arguments
+        .out
+        .unwrap_or_else(|| PathBuf::from(format!("counterfoil-model-{}.html", machine.name)));
+    std::fs::write(&file, page).with_context(|| file.display().to_string())?;
+    writeln!(out, "{}", file.display())?;
+    Ok(Exit::Within)
 }
 
 fn derive(arguments: DeriveArguments, out: &mut dyn Write) -> anyhow::Result<Exit> {

@@ -3,12 +3,14 @@
 //! A bounded walk frames the bytes first; then the parts of a plan are read
 //! from its tree, each value with its standing. Nothing here calculates.
 
+mod aperture;
 mod beam;
 mod complete;
 mod control_point;
 mod device;
 mod error;
 mod fraction;
+mod framing;
 mod identity;
 mod kind;
 mod limits;
@@ -23,6 +25,7 @@ mod source;
 mod text;
 mod tree;
 mod walk;
+mod wedge_position;
 
 pub use error::ReadError;
 pub use kind::{FileKind, Identified, identify};

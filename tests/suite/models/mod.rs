@@ -5,6 +5,7 @@ mod damaged;
 mod interpolation;
 mod kernel;
 mod loader;
+mod page;
 mod planted;
 mod shipped;
 mod tg71;

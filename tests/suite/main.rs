@@ -3,14 +3,14 @@
 /// Beam models: loader errors, published tables, shipped models.
 mod models;
 
-/// The calculation of one beam.
-mod dose;
 /// Builds RT Plan objects; used by every module that needs a plan.
 #[allow(
     dead_code,
     reason = "a tool kit: not every deviation is needed by a test yet"
 )]
 mod builder;
+/// The calculation of one beam.
+mod dose;
 /// The order of the house, read from the sources.
 mod house;
 /// The reader against plans that the builder writes, and against damaged files.

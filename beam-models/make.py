@@ -33,11 +33,11 @@ KERNEL_DEPTH = 10.0  # where the kernel's phantom scatter factors are looked at 
 #   horn         primary in-air ratio off axis: see horn()
 #   mu           effective attenuation of the primary on the axis, per cm: drives the softening off axis
 BEAMS = {
-    "rowan/6": dict(q=0.6774, d0=10.0, d_max=(1.5, 0.0), surface=(0.50, 0.0075), join=3.0,
+    "rowan/6": dict(q=0.6774, d0=10.0, d_max=(1.6, 0.0), surface=(0.50, 0.0075), join=3.0,
                     sc=(0.060, 6.5, 0.00035), horn=("flat", 0.048, 8.0), mu=0.0480,
                     shallow=[0, 0.3, 0.6, 0.9, 1.2, 1.3, 1.4, 1.5, 1.6, 1.8, 2, 2.5, 3, 3.5, 4],
                     table="tpr", off_axis="in-air"),
-    "rowan/18": dict(q=0.7807, d0=10.0, d_max=(3.8, -0.01), surface=(0.72, 0.0085), join=6.0,
+    "rowan/18": dict(q=0.7807, d0=10.0, d_max=(3.8, 0.006), surface=(0.72, 0.0085), join=6.0,
                      sc=(0.058, 7.5, 0.00050), horn=("flat", 0.042, 6.5), mu=0.0300,
                      shallow=[0, 0.5, 1, 1.5, 2, 2.5, 2.8, 3, 3.2, 3.4, 3.6, 3.8, 4, 4.5],
                      table="tpr", off_axis="in-air"),
@@ -45,7 +45,7 @@ BEAMS = {
                      sc=(0.055, 7.0, 0.00030), horn=("flat", 0.055, 9.0), mu=0.0490,
                      shallow=[0, 0.3, 0.6, 0.9, 1.2, 1.3, 1.4, 1.5, 1.6, 1.8, 2, 2.5, 3, 3.5, 4],
                      table="pdd", ssd=100.0, off_axis="in-water"),
-    "sorrel/6-fff": dict(q=0.6495, d0=10.0, d_max=(1.4, 0.0), surface=(0.44, 0.0070), join=3.0,
+    "sorrel/6-fff": dict(q=0.6495, d0=10.0, d_max=(1.3, 0.0), surface=(0.44, 0.0070), join=3.0,
                          sc=(0.022, 5.5, 0.00020), horn=("cone", 13.0, 1.25), mu=0.0530,
                          shallow=[0, 0.3, 0.6, 0.9, 1.2, 1.3, 1.4, 1.5, 1.6, 1.8, 2, 2.5, 3, 3.5, 4],
                          table="pdd at maximum", ssd=100.0, off_axis="in-air"),

@@ -207,6 +207,7 @@ pub struct FileEntry {
     /// plan, brachy-plan, ion-plan, structure-set, ct, dose, record, other-dicom, not-dicom.
     pub kind: Option<&'static str>,
     /// What became of it.
+    #[serde(flatten)]
     pub outcome: FileOutcome,
     /// Why.
     pub message: String,

@@ -9,13 +9,18 @@ use crate::quantity::tolerance;
 use crate::settings::Site;
 
 /// Judges the entries of one fraction group together. Gives the sum at the
-/// shared point, or why there is none.
+/// shared point, or why there is none. `lost` says that a beam of the group is
+/// not in the plan: then there is no sum.
 pub(super) fn judge_group(
     plan: &Plan,
     entries: &mut [&mut BeamEntry],
+    lost: Option<String>,
     site: &Site,
 ) -> Result<SharedPointSum, String> {
-    let sum = shared_point_sum(entries);
+    let sum = match lost {
+        Some(reason) => Err(reason),
+        None => shared_point_sum(entries),
+    };
     judge_small_shares(plan, entries, site);
     judge_fraction_level(plan, entries, site, sum.as_ref());
     sum

@@ -162,11 +162,26 @@ fn judge_groups(
             .iter_mut()
             .filter(|entry| entry.calculation.group_index == Some(group_index))
             .collect();
-        if !entries.is_empty() {
-            sums.push(judge_group(plan, &mut entries, site));
+        let lost = lost_references(plan, group_index);
+        if !entries.is_empty() || lost.is_some() {
+            sums.push(judge_group(plan, &mut entries, lost, site));
         }
     }
     sums
+}
+
+/// References of a group that lead to no beam, in words: something that was meant to be treated is not in the file.
+fn lost_references(plan: &Plan, group_index: usize) -> Option<String> {
+    let group = plan.fraction_groups.get(group_index)?;
+    let lost = group.beams.iter().find(|reference| {
+        !plan.beams.iter().any(|beam| {
+            !beam.number.is_absent() && beam.number.get() == reference.beam_number.get()
+        })
+    })?;
+    Some(lost.beam_number.get().map_or_else(
+        || "a reference of the fraction group names no beam".to_owned(),
+        |number| format!("the fraction group refers to beam {number}, which is not in the plan"),
+    ))
 }
 
 fn plan_verdict(
@@ -181,7 +196,8 @@ fn plan_verdict(
         Effect::BlocksPlan => true,
         Effect::BlocksScope => !matches!(note.scope, NoteScope::Beam(_)),
     });
-    let of_notes = if blocked {
+    let lost = (0..plan.fraction_groups.len()).any(|group| lost_references(plan, group).is_some());
+    let of_notes = if blocked || lost {
         Verdict::NotVerifiable
     } else {
         Verdict::NotApplicable

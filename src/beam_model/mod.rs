@@ -4,11 +4,16 @@
 //! factors mean and how they are multiplied is the work of `dose`.
 
 mod beam;
+mod check;
+mod derive;
 mod error;
+pub mod kernel;
 mod load_beam;
 mod load_machine;
+mod load_tables;
 mod machine;
 mod machine_file;
+mod machine_value;
 mod model_folder;
 mod table;
 mod table_file;
@@ -17,6 +22,8 @@ pub use beam::{
     BeamModel, BeamUncertainty, CouchArc, OffAxis, OffAxisKind, OutputTable, ReferenceOutput,
     TableKind,
 };
+pub use check::{ModelFinding, ModelSeverity, TablePlace, check_machine, tpr20_10_from_pdd20_10};
+pub use derive::{DerivedTable, derivable_grid, derive_table};
 pub use error::ModelError;
 pub use load_machine::{load_machine, load_models};
 pub use machine::{

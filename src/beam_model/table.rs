@@ -220,6 +220,18 @@ impl Grid {
         &self.name
     }
 
+    /// Name of the row coordinate.
+    #[must_use]
+    pub const fn row_name(&self) -> &'static str {
+        self.row_name
+    }
+
+    /// Name of the column coordinate.
+    #[must_use]
+    pub const fn column_name(&self) -> &'static str {
+        self.column_name
+    }
+
     /// Row coordinates.
     #[must_use]
     pub fn rows(&self) -> &[f64] {

@@ -7,6 +7,7 @@ use std::path::{Path, PathBuf};
 use anyhow::{Context, bail};
 
 use super::args::{AuditArguments, FailOn};
+use super::clock::started;
 use super::exit::Exit;
 use super::progress;
 use super::settings::{Effective, effective, load};
@@ -133,21 +134,6 @@ fn facts(
         options,
         site_source: effective.site_source.clone(),
     })
-}
-
-/// The time of the run: now, or SOURCE_DATE_EPOCH (seconds since 1970, UTC) for reports that must be repeatable to the byte.
-fn started() -> anyhow::Result<jiff::ZonedDateTime> {
-    match std::env::var("SOURCE_DATE_EPOCH") {
-        Ok(seconds) => {
-            let seconds: i64 = seconds
-                .trim()
-                .parse()
-                .with_context(|| format!("SOURCE_DATE_EPOCH is {seconds:?}, must be seconds"))?;
-            let instant = jiff::Timestamp::from_second(seconds).context("SOURCE_DATE_EPOCH")?;
-            Ok(instant.to_zoned_datetime(jiff::tz::TimeZone::UTC))
-        }
-        Err(_) => Ok(jiff::ZonedDateTime::now().round(jiff::Unit::Second)?),
-    }
 }
 
 const fn fail_on_word(fail_on: FailOn) -> &'static str {

@@ -19,6 +19,7 @@ mod placement;
 mod plan_depth;
 mod point;
 mod prerequisite;
+mod proof;
 mod ray;
 mod spread;
 mod technique;
@@ -36,6 +37,7 @@ pub use outcome::{
     BeamCalculation, BeamView, BlockOutline, DepthBasis, DepthCandidate, DosePoint, LeafOpening,
     Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares, Technique,
 };
+pub use proof::prove;
 pub use ray::RayPoint;
 pub use spread::expected_spread;
 pub use technique::classify;

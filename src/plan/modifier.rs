@@ -19,6 +19,7 @@ pub enum WedgeKind {
     /// Partial wedge that does not reach the axis.
     PartialStandard,
     /// Partial wedge that does not reach the axis, motorised.
+    #[serde(rename = "PARTIAL_MOTORIZ")]
     PartialMotorized,
     /// Anything else, as the file says.
     #[serde(untagged)]
@@ -148,4 +149,16 @@ pub struct Bolus {
     pub description: Given<String>,
     /// Accessory Code (300A,00F9).
     pub accessory_code: Given<String>,
+}
+
+#[cfg(test)]
+mod tests {
+    use super::WedgeKind;
+
+    /// PS3.3 C.8.8.14: the term is cut to the 16 characters of a code string.
+    #[test]
+    fn verify_a_partial_motorised_wedge_is_shown_by_its_dicom_term() {
+        let shown = serde_json::to_string(&WedgeKind::PartialMotorized).unwrap();
+        assert_eq!(shown, "\"PARTIAL_MOTORIZ\"");
+    }
 }

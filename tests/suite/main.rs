@@ -3,6 +3,8 @@
 /// Beam models: loader errors, published tables, shipped models.
 mod models;
 
+/// Whole plans from bytes to verdicts.
+mod audit;
 /// Builds RT Plan objects; used by every module that needs a plan.
 #[allow(
     dead_code,
@@ -15,5 +17,6 @@ mod dose;
 mod house;
 /// The reader against plans that the builder writes, and against damaged files.
 mod reader;
+mod report;
 /// The site file.
 mod settings;

@@ -241,9 +241,11 @@ impl<'n, 'a> Node<'n, 'a> {
         }
         if let Some(quantity) = wanted.quantity {
             let range = quantity.range();
+            let credible = |value: &f64| *value >= range.least && *value <= range.greatest;
             let objection = out
                 .iter()
-                .find_map(|&value| quantity.objection(value).map(|text| (value, text)));
+                .find(|value| !credible(value))
+                .and_then(|&value| quantity.objection(value).map(|text| (value, text)));
             if let Some((value, objection)) = objection {
                 self.note_values(
                     notes,

@@ -12,13 +12,6 @@ pub(crate) struct Item {
     object: Option<InMemDicomObject>,
 }
 
-/// An item that goes on from an object.
-pub(crate) fn object_item(object: InMemDicomObject) -> Item {
-    Item {
-        object: Some(object),
-    }
-}
-
 impl Item {
     pub(crate) fn new() -> Self {
         Self::default()

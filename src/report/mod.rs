@@ -9,6 +9,7 @@ mod folder;
 mod json;
 mod number;
 mod page;
+mod plain_text;
 mod plan_text;
 mod svg;
 mod table;

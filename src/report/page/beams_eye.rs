@@ -12,7 +12,7 @@ const PLOT: f64 = 240.0;
 const LEFT: f64 = 34.0;
 const TOP: f64 = 24.0;
 const WIDTH: f64 = LEFT + PLOT + 8.0;
-const HEIGHT: f64 = TOP + PLOT + 34.0;
+const HEIGHT: f64 = TOP + PLOT + 36.0;
 
 /// A picture and what stands under it.
 #[derive(Clone, Debug)]
@@ -152,8 +152,7 @@ fn draw_axes(drawing: &mut Drawing, axes: &Axes) {
         let along_y = axes.at([-half, tick_cm]);
         drawing.line("tick", along_x, [along_x[0], along_x[1] + length]);
         drawing.line("tick", along_y, [along_y[0] - length, along_y[1]]);
-        let name_is_here = tick_cm + 5.0 > half;
-        if labelled && !name_is_here {
+        if labelled {
             let label = short(tick_cm, 0);
             drawing.text(
                 "label",
@@ -171,7 +170,7 @@ fn draw_axes(drawing: &mut Drawing, axes: &Axes) {
     }
     drawing.text(
         "label",
-        [LEFT + PLOT, TOP + PLOT + 19.0],
+        [LEFT + PLOT, TOP + PLOT + 32.0],
         Anchor::End,
         "x_b / cm",
     );

@@ -19,6 +19,8 @@ pub(super) const BEAMS_IN_FULL: usize = 40;
 pub(super) struct PlanView {
     id: String,
     label: String,
+    /// The label when it is too long for the heading.
+    whole_label: Option<String>,
     patient_id: String,
     patient_name: Option<String>,
     file: String,
@@ -107,6 +109,10 @@ pub(super) fn view(plan: &PlanEntry, entry: u64) -> PlanView {
     PlanView {
         id: plan_anchor(entry),
         label: plan_name(plan),
+        whole_label: plan
+            .plan_label
+            .clone()
+            .filter(|label| !label.is_empty() && *label != plan_name(plan)),
         patient_id: text_or_dash(plan.patient_id.as_ref()),
         patient_name: plan.patient_name.clone(),
         file: plan.file.clone(),
@@ -121,7 +127,10 @@ pub(super) fn view(plan: &PlanEntry, entry: u64) -> PlanView {
             || MISSING.to_owned(),
             |dose| format!("{} Gy", fixed(dose, 2)),
         ),
-        worst_beam: signed_or_dash(plan.worst_beam_percent, 1),
+        worst_beam: plan.worst_beam_percent.map_or_else(
+            || MISSING.to_owned(),
+            |percent| format!("{} %", signed(percent, 1)),
+        ),
         sum: plan.sum.as_ref().map(|sum| SumView {
             planned: fixed(sum.planned_dose_gy, 3),
             independent: fixed(sum.independent_dose_gy, 3),

@@ -1,5 +1,7 @@
 //! One plan in full, in finished strings.
 
+use std::cmp::Reverse;
+
 use askama::Template;
 
 use super::attention::plan_name;
@@ -12,6 +14,9 @@ use crate::settings::Severity;
 
 /// A plan shows the detail of at most so many beams, the most urgent first; the table has all.
 pub(super) const BEAMS_IN_FULL: usize = 40;
+
+/// A plan shows at most so many findings, the most severe.
+const FINDINGS_SHOWN: usize = 100;
 
 /// A plan in full.
 #[derive(Debug, Template)]
@@ -41,6 +46,7 @@ pub(super) struct PlanView {
     details: Vec<BeamView>,
     details_left_out: Option<String>,
     findings: Vec<FindingView>,
+    findings_left_out: Option<String>,
 }
 
 #[derive(Debug)]
@@ -152,8 +158,33 @@ pub(super) fn view(plan: &PlanEntry, entry: u64) -> PlanView {
                 counted(left_out as u64, "further beam", "further beams")
             )
         }),
-        findings: plan.findings.iter().map(finding_view).collect(),
+        findings: findings(plan),
+        findings_left_out: (plan.findings.len() > FINDINGS_SHOWN).then(|| {
+            format!(
+                "{} are left out here, the least severe; findings.csv has every one.",
+                counted(
+                    (plan.findings.len() - FINDINGS_SHOWN) as u64,
+                    "further finding",
+                    "further findings"
+                )
+            )
+        }),
     }
+}
+
+/// The findings shown: all, or the most severe, in the plan's order.
+fn findings(plan: &PlanEntry) -> Vec<FindingView> {
+    let mut order: Vec<usize> = (0..plan.findings.len()).collect();
+    order.sort_by_key(|place| {
+        let severity = plan.findings.get(*place).map(|finding| finding.severity);
+        (Reverse(severity), *place)
+    });
+    order.truncate(FINDINGS_SHOWN);
+    order.sort_unstable();
+    order
+        .iter()
+        .filter_map(|place| plan.findings.get(*place).map(finding_view))
+        .collect()
 }
 
 fn finding_view(finding: &Finding) -> FindingView {

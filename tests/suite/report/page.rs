@@ -10,6 +10,12 @@ fn page(plans_in_full: usize, plans: &[PlanEntry]) -> String {
     sample::text(&folder.path(), "report.html")
 }
 
+/// Leaves the sample page under the build folder, for the eye: screen, dark mode, print preview.
+fn leave_for_the_eye(page: &str) {
+    let place = std::path::Path::new(env!("CARGO_TARGET_TMPDIR")).join("sample-report.html");
+    std::fs::write(place, page).unwrap();
+}
+
 /// The first stretch of text from one mark to the next.
 fn between<'a>(text: &'a str, from: &str, to: &str) -> &'a str {
     let start = text.find(from).unwrap_or_else(|| panic!("no {from:?}"));
@@ -28,6 +34,7 @@ fn attention(page: &str) -> Vec<&str> {
 #[test]
 fn verify_page_says_what_it_must() {
     let page = page(10, &sample::plans());
+    leave_for_the_eye(&page);
     for text in [
         "This report supports and does not replace a qualified physicist's review, measurement, licensed practice and local rules.",
         "Demonstration data, not for clinical use",
@@ -299,4 +306,27 @@ fn verify_wild_numbers_break_nothing() {
         "a coordinate or number"
     );
     assert!(page.contains("off the scale"));
+}
+
+#[test]
+fn verify_many_urgent_lines_are_bounded_and_the_page_says_so() {
+    let plan = sample::plan("x", "p", "l", vec![sample::shaped_beam(1)]);
+    let page = page(1, &vec![plan; 2100]);
+    // 2100 beams and the truncated file.
+    assert_eq!(attention(&page).len(), 2000);
+    assert!(page.contains("2101 things need a person; the 2000 most urgent stand here"));
+    assert!(page.contains("<td>technique or device not covered</td><td class=\"n\">2100</td>"));
+}
+
+#[test]
+fn verify_many_findings_are_bounded_and_the_page_says_so() {
+    let mut plan = sample::plans().remove(0);
+    let note = plan.findings[0].clone();
+    plan.findings = vec![note; 130];
+    plan.findings[129].severity = counterfoil::settings::Severity::Action;
+    plan.findings[129].message = "the one that matters".to_owned();
+    let page = page(3, &[plan]);
+    assert!(page.contains("30 further findings are left out here, the least severe"));
+    let table = between(&page, "<table class=\"findings\">", "</table>");
+    assert!(table.contains("the one that matters"));
 }

@@ -155,10 +155,16 @@ fn judged_otherwise(beam: &BeamEntry) -> Option<String> {
         Judgement::Alone => None,
         Judgement::ShareOfTotal {
             percent_of_total, ..
-        } => Some(format!("judged: {} of total", signed(*percent_of_total, 1))),
+        } => Some(format!(
+            "judged: {} % of total",
+            signed(*percent_of_total, 1)
+        )),
         Judgement::FractionSum {
             sum_deviation_percent,
-        } => Some(format!("judged: sum {}", signed(*sum_deviation_percent, 1))),
+        } => Some(format!(
+            "judged: sum {} %",
+            signed(*sum_deviation_percent, 1)
+        )),
     }
 }
 

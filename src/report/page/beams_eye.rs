@@ -2,6 +2,7 @@
 //! dose point at the isocentre plane, seen from the source in the collimator
 //! system. Where things are was worked out in `dose`.
 
+use super::words::counted;
 use crate::dose::{BeamView, BlockOutline, LeafOpening};
 use crate::report::number::{short, signed};
 use crate::report::svg::{Anchor, Drawing, Scale};
@@ -230,10 +231,12 @@ fn caption(view: &BeamView, half_cm: f64) -> String {
     let shields = shields.count();
     let apertures = view.blocks.len() - shields;
     if shields > 0 {
-        parts.push(format!("{shields} block outline(s), shielded inside"));
+        let outlines = counted(shields as u64, "block outline", "block outlines");
+        parts.push(format!("{outlines}, shielded inside"));
     }
     if apertures > 0 {
-        parts.push(format!("{apertures} aperture outline(s), shielded outside"));
+        let outlines = counted(apertures as u64, "aperture outline", "aperture outlines");
+        parts.push(format!("{outlines}, shielded outside"));
     }
     let coarse = |block: &BlockOutline| block.outline_cm.len() > MOST_POINTS;
     if view.leaf_banks.iter().any(|bank| bank.len() > MOST_PAIRS) || view.blocks.iter().any(coarse)

@@ -4,7 +4,7 @@ use super::ControlPointDetail;
 use super::control_point;
 use super::lines::{Lines, as_is, in_unit};
 use super::modifiers;
-use crate::plan::{Beam, DeliveryType, DeviceKind, LimitingDevice};
+use crate::plan::{Beam, DeliveryType, DeviceKind, LimitingDevice, RadiationType};
 use crate::report::plain_text::trimmed;
 
 pub(super) fn beam(lines: &mut Lines, beam: &Beam, index: usize, detail: ControlPointDetail) {
@@ -23,7 +23,7 @@ pub(super) fn beam(lines: &mut Lines, beam: &Beam, index: usize, detail: Control
         radiation.term().to_owned()
     });
     lines.given("nominal energy", &beam.energy.nominal, |energy| {
-        format!("{} MV or MeV", trimmed(*energy, 6))
+        format!("{} {}", trimmed(*energy, 6), energy_unit(beam))
     });
     lines.optional("fluence mode", &beam.energy.fluence_mode, as_is);
     lines.optional("fluence mode ID", &beam.energy.fluence_mode_id, as_is);
@@ -57,6 +57,14 @@ pub(super) fn beam(lines: &mut Lines, beam: &Beam, index: usize, detail: Control
     }
     modifiers::modifiers(lines, beam);
     control_point::control_points(lines, beam, detail);
+}
+
+const fn energy_unit(beam: &Beam) -> &'static str {
+    match beam.radiation.value() {
+        Some(RadiationType::Photon) => "MV",
+        Some(RadiationType::Electron) => "MeV",
+        _ => "MV or MeV",
+    }
 }
 
 fn delivery(delivery: &DeliveryType) -> String {

@@ -87,13 +87,15 @@ impl Lines {
                 format!("{name}, ")
             };
             if !line.is_empty() && line.len() + word.len() > LINE_WIDTH {
-                self.out.push_str(&format!("  -  {}\n", line.trim_end()));
+                self.out
+                    .push_str(&format!("  -  absent: {}\n", line.trim_end()));
                 line.clear();
             }
             line.push_str(&word);
         }
         if !line.is_empty() {
-            self.out.push_str(&format!("  -  {}\n", line.trim_end()));
+            self.out
+                .push_str(&format!("  -  absent: {}\n", line.trim_end()));
         }
     }
 

@@ -6,6 +6,7 @@ mod beam;
 mod control_point;
 mod lines;
 mod modifiers;
+mod overview;
 mod plan;
 
 use crate::plan::Plan;
@@ -32,6 +33,7 @@ pub fn plan_text(plan: &Plan, control_points: ControlPointDetail) -> String {
     for (index, group) in plan.fraction_groups.iter().enumerate() {
         plan::fraction_group(&mut lines, group, index);
     }
+    overview::beams(&mut lines, &plan.beams);
     for (index, beam) in plan.beams.iter().enumerate() {
         beam::beam(&mut lines, beam, index, control_points);
     }

@@ -55,7 +55,7 @@ fn verify_page_says_what_it_must() {
         "AAPM TG-71, isocentric form",
         "the planning system&#39;s word",
         "2.0 mm on the planning system&#39;s word, 3.6 %/cm",
-        "judged: +0.2 of total",
+        "judged: +0.2 % of total",
         "outside the method&#39;s range",
     ] {
         assert!(page.contains(text), "{text}");

@@ -200,7 +200,7 @@ fn verify_plan_text_shows_values_and_where_they_stand() {
         ("beam dose in one fraction", 'S', "1.02754 Gy"),
         ("dose specification point", 'S', "(1, -2.5, 0.25) cm"),
         ("radiation", 'S', "PHOTON"),
-        ("nominal energy", 'S', "6 MV or MeV"),
+        ("nominal energy", 'S', "6 MV"),
         ("source-axis distance", '-', ""),
         ("SSD", 'S', "89.843 cm"),
         (
@@ -228,7 +228,8 @@ fn verify_plan_text_shows_values_and_where_they_stand() {
         "beam item 1, stops its verification: The source-axis distance is missing.",
         "at BeamSequence[0].SourceAxisDistance (300A,00B4)",
         "expected 60 to 150 cm",
-        "plan name, ",
+        "-  absent: plan name, ",
+        "7       RLAT  6       270     -      -      -10 to 10  -4 to 7.5  89.84   2",
     ] {
         assert!(text.contains(part), "{part}\n{text}");
     }

@@ -12,6 +12,7 @@ mod model_page;
 mod model_text;
 mod number;
 mod page;
+mod plain_text;
 mod plan_text;
 mod svg;
 mod table;

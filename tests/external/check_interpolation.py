@@ -123,7 +123,7 @@ def check_off_axis(machine, energy, folder, in_air, seed):
     for _ in range(40):
         x, y = round(dice.uniform(-14, 14), 2), round(dice.uniform(-14, 14), 2)
         depth = round(dice.uniform(3, 35), 2)
-        factors, _ = field("--machine", machine, "--energy", energy, "--square", 38, "--depth", depth,
+        factors, _ = field("--machine", machine, "--energy", energy, "--square", 34, "--depth", depth,
                            f"--point={x},{y}")
         radius = math.hypot(x, y)
         row_depth = depth * math.hypot(1, radius / 100) if in_air else depth

@@ -1,32 +1,39 @@
-#!/usr/bin/env python3
-"""Holds the tables of the shipped beam models against the script that makes them, byte for byte.
-
-Runs beam-models/make.py into a temporary folder and compares. Exit status 1 when a table differs, is missing, or is not made by the
-script. Needs numpy, as make.py does.
-"""
+"""The shipped tables are what `beam-models/make.py` makes, byte for byte."""
 
 import subprocess
 import sys
-import tempfile
-from pathlib import Path
 
-MODELS = Path(__file__).resolve().parents[2] / "beam-models"
+from common import MODELS, Checks, scratch
 
 
-def tables(folder):
-    return {path.relative_to(folder).as_posix(): path.read_bytes() for path in sorted(folder.glob("*/*/*.csv"))}
+def made_again():
+    folder = scratch("models")
+    subprocess.run([sys.executable, MODELS / "make.py", folder], check=True)
+    return {path.relative_to(folder): path.read_bytes() for path in sorted(folder.rglob("*.csv"))}
+
+
+def shipped():
+    tables = [path for path in sorted(MODELS.rglob("*.csv")) if path.parent != MODELS]
+    return {path.relative_to(MODELS): path.read_bytes() for path in tables}
+
+
+def check_same_files(made, found):
+    assert made, "make.py made nothing"
+    assert set(made) == set(found), f"made {sorted(map(str, made))}, shipped {sorted(map(str, found))}"
+
+
+def check_same_bytes(made, found):
+    assert made == found, "shipped and made differ: run beam-models/make.py and commit what it writes"
 
 
 def main():
-    with tempfile.TemporaryDirectory() as made:
-        subprocess.run([sys.executable, "-B", MODELS / "make.py", made], check=True)
-        fresh, committed = tables(Path(made)), tables(MODELS)
-    wrong = sorted(name for name in fresh.keys() | committed.keys() if fresh.get(name) != committed.get(name))
-    for name in wrong:
-        print(f"beam-models/{name}: differs from what beam-models/make.py makes")
-    print(f"models: {len(fresh)} tables made, {len(wrong)} differ")
-    return 1 if wrong or not fresh else 0
+    checks = Checks()
+    made, found = made_again(), shipped()
+    checks.run("models: every table is made by make.py", check_same_files, made, found)
+    for path, content in made.items():
+        checks.run(f"models: {path} is as made", check_same_bytes, content, found.get(path))
+    checks.finish()
 
 
 if __name__ == "__main__":
-    sys.exit(main())
+    main()

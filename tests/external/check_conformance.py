@@ -5,7 +5,9 @@ their reason."""
 import re
 import subprocess
 
-from common import SAMPLES, Checks, sample_plans
+import pydicom
+
+from common import SAMPLES, Checks, sample_plans, scratch
 
 # Errors of faulty plans that are meant: file name, pattern of the error, why. Faults that the standard allows
 # (a wrong number, say) give no error and are not listed.
@@ -30,6 +32,16 @@ def check(path):
     assert not other, "; ".join(other[:4])
 
 
+def check_the_checker():
+    """dciodvfy does object: the first sample without its beams' numbers, written by pydicom."""
+    ds = pydicom.dcmread(sample_plans()[0])
+    for beam in ds.BeamSequence:
+        del beam.BeamNumber
+    path = scratch("conformance") / "without-numbers.dcm"
+    ds.save_as(path)
+    assert any("BeamNumber" in line for line in errors(path)), "a beam without a number gives no error"
+
+
 def check_some():
     assert sample_plans(), f"no .dcm file in {SAMPLES}"
     names = {path.relative_to(SAMPLES).as_posix() for path in sample_plans()}
@@ -40,6 +52,7 @@ def check_some():
 def main():
     checks = Checks()
     checks.run("conformance: there are sample plans", check_some)
+    checks.run("conformance: the checker objects to a faulty plan", check_the_checker)
     for path in sample_plans():
         checks.run(f"conformance: {path.relative_to(SAMPLES)}", check, path)
     checks.finish()

@@ -140,6 +140,32 @@ def check_file(path, blocking, lossy_text=False):
     check_notes(notes, ds, blocking)
 
 
+def check_the_comparison(path):
+    """The comparison sees every single change: each leaf of the program's JSON is changed in turn."""
+    expected = pydicom_reading.plan(pydicom.dcmread(path))
+    found = read_json(path)
+    found.pop("notes")
+    count = 0
+    for holder, key in leaves_of(found):
+        before = holder[key]
+        holder[key] = (before + 1e-6) if isinstance(before, (int, float)) and not isinstance(before, bool) else "other"
+        if before is True or before is False:
+            holder[key] = not before
+        # An explanation in words may be any.
+        assert key == "how" or compare("plan", found, expected), f"a changed {key} ({before!r}) was not seen"
+        holder[key] = before
+        count += 1
+    assert count > 200 and not compare("plan", found, expected), f"{count} leaves"
+
+
+def leaves_of(node):
+    for key, value in list(node.items() if isinstance(node, dict) else enumerate(node)):
+        if isinstance(value, (dict, list)):
+            yield from leaves_of(value)
+        else:
+            yield node, key
+
+
 def check_coverage():
     never = sorted(all_fields - stated_somewhere - NEVER_STATED)
     assert not never, f"never stated in any file, hence never compared: {', '.join(never)}"
@@ -169,7 +195,10 @@ def main():
     base = next(path for path in plans if path.name == "rtplan.dcm")
     for path in plans:
         checks.run(f"reader: pydicom's {path.name}", check_file, path, frozenset())
-    for variant in variants(scratch("variants"), base):
+    written = variants(scratch("variants"), base)
+    full = next(variant for variant in written if variant.name == "everything explicit")
+    checks.run("reader: the comparison sees every change", check_the_comparison, full.path)
+    for variant in written:
         checks.run(f"reader: variant {variant.name}", check_file, variant.path, variant.blocking, variant.lossy_text)
     checks.run("reader: every field was stated in some variant", check_coverage)
     checks.run("reader: there are sample plans", check_sample_plans_are_there)

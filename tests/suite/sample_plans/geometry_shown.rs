@@ -69,8 +69,8 @@ fn collimator_turned() -> Sample {
     Course::new(15, "Pine", "COLL90", "Collimator turned")
         .point(beside_isocentre([5.0, 0.0, 0.5]), PointStated::ByTarget)
         .fractions(15)
-        .treat(field(1, "Anterior", 0.0, 90.0, 92.0), 1.5, 0.3)
-        .treat(field(2, "Posterior", 180.0, 270.0, 90.8), 1.5, -1.1)
+        .treat(field(1, "Anterior", 0.0, 90.0, 92.0), 1.4, 0.3)
+        .treat(field(2, "Posterior", 180.0, 270.0, 90.8), 1.6, -1.1)
         .sound(
             "collimator-turned.dcm",
             "collimator at 90 and 270 degrees; the point is the one TARGET dose reference with coordinates",

@@ -29,7 +29,6 @@ pub(super) fn check_references(plan: &Plan, notes: &mut Notes) {
     check_groups(plan, &beams, notes);
     check_setups(plan, notes);
     check_prescription(plan, notes);
-    check_metersets(plan, notes);
 }
 
 type Counts = BTreeMap<i32, usize>;
@@ -186,59 +185,5 @@ fn check_prescription(plan: &Plan, notes: &mut Notes) {
             "dose reference number",
             notes,
         );
-    }
-}
-
-/// Treatment beams that no group references, and references without a meterset.
-fn check_metersets(plan: &Plan, notes: &mut Notes) {
-    let referenced = count(
-        plan.fraction_groups
-            .iter()
-            .flat_map(|group| group.beams.iter().map(|beam| &beam.beam_number)),
-    );
-    let mut missing = |beam: usize, place: String, message: &str| {
-        notes.add(ReadingNote {
-            scope: NoteScope::Beam(beam),
-            kind: NoteKind::MissingValue,
-            effect: Effect::None,
-            place,
-            message: message.to_owned(),
-            measured: None,
-            limit: None,
-        });
-    };
-    for (index, beam) in plan.beams.iter().enumerate() {
-        if let Some(number) = beam.number.value()
-            && beam.is_treatment()
-            && !referenced.contains_key(number)
-        {
-            let place = place_of(&[(tags::BEAM_SEQUENCE, index)], tags::BEAM_NUMBER);
-            let message = "no fraction group references this treatment beam: it has no meterset";
-            missing(index, place, message);
-        }
-    }
-    for (group_index, group) in plan.fraction_groups.iter().enumerate() {
-        for (item, reference) in group.beams.iter().enumerate() {
-            let beam = reference
-                .beam_number
-                .value()
-                .and_then(|&number| plan.beam_index_by_number(number))
-                .and_then(|index| plan.beams.get(index).map(|beam| (index, beam)));
-            if let Some((index, beam)) = beam
-                && beam.is_treatment()
-                && reference.meterset_mu.is_absent()
-            {
-                let path = [
-                    (tags::FRACTION_GROUP_SEQUENCE, group_index),
-                    (tags::REFERENCED_BEAM_SEQUENCE, item),
-                ];
-                let place = place_of(&path, tags::BEAM_METERSET);
-                missing(
-                    index,
-                    place,
-                    "the treatment beam has no usable meterset here",
-                );
-            }
-        }
     }
 }

@@ -164,13 +164,17 @@ fn unreadable() -> Vec<Sample> {
 
 fn misplaced() -> Vec<Sample> {
     vec![
-        opposed(110, "Hickory", "SHALLOW").faulty(
-            "point-in-build-up.dcm",
-            "the dose point is 0.6 cm below the skin of beam 1",
-            not_verifiable(&["point-in-build-up"]),
-            // 8.8 cm towards the front from the isocentre, which is 9.4 cm deep.
-            |plan| put_point(plan, beside_isocentre([0.0, -8.8, 0.0])),
-        ),
+        // One field: from the other side the same point would be deep and merely wrong.
+        Course::new(110, "Hickory", "SHALLOW", "One field")
+            .fractions(20)
+            .treat(field(1, "Anterior", 0.0, 90.6), 2.0, 0.5)
+            .faulty(
+                "point-in-build-up.dcm",
+                "the dose point is 0.6 cm below the skin",
+                not_verifiable(&["point-in-build-up"]),
+                // 8.8 cm towards the front from the isocentre, which is 9.4 cm deep.
+                |plan| put_point(plan, beside_isocentre([0.0, -8.8, 0.0])),
+            ),
         opposed(111, "Hornbeam", "JAW").faulty(
             "point-under-jaw.dcm",
             "the X jaws of beam 1 stand at +1 and +7 cm, the point is on the axis",

@@ -6,7 +6,7 @@
 //! 98:286 (2011); the coefficients were read in two identical public copies, not in the paper.
 //! Not valid in the build-up.
 
-use std::f64::consts::TAU;
+use std::f64::consts::{FRAC_PI_4, TAU};
 
 /// TPR20,10 for which the kernel was published.
 pub const QUALITY_RANGE: (f64, f64) = (0.60, 0.81);
@@ -136,7 +136,8 @@ impl PencilKernel {
     /// Dose on the axis of a square field at the depth, per unit energy fluence.
     #[must_use]
     pub fn square_dose(&self, side_cm: f64, depth_cm: f64) -> f64 {
-        self.rectangle_dose((side_cm, side_cm), depth_cm)
+        // Eight equal triangles.
+        8.0 * self.terms(depth_cm).triangle(side_cm / 2.0, FRAC_PI_4)
     }
 
     /// Tissue-phantom ratio of a square field, normalised at d0.

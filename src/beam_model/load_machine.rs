@@ -74,7 +74,13 @@ pub fn load_machine(folder: &Path) -> Result<MachineModel, ModelError> {
     let mut files = ModelFolder::new(folder);
     let path = files.machine_path();
     let file = parse_machine_file(&path, &files.read_text(MACHINE_FILE)?)?;
-    let serves = serving_names(&path, &file.serves)?;
+    if file.serves.is_empty() {
+        return Err(ModelError::setting(
+            &path,
+            "serves",
+            "no treatment machine name is given",
+        ));
+    }
     let collimation = collimation(&path, &file.jaws, &file.leaf_banks)?;
     let upper_jaws = upper_axis(&path, &file.jaws)?;
     let approval = file.approval.map(|entry| Approval {
@@ -102,7 +108,7 @@ pub fn load_machine(folder: &Path) -> Result<MachineModel, ModelError> {
     }
     Ok(MachineModel {
         name: folder_name(folder),
-        serves,
+        serves: file.serves,
         sad_cm: file.sad_cm,
         upper_jaws,
         collimation,
@@ -144,24 +150,6 @@ fn parse_machine_file(path: &Path, text: &str) -> Result<MachineFile, ModelError
         ));
     }
     toml::from_str(text).map_err(refused)
-}
-
-fn serving_names(path: &Path, written: &[String]) -> Result<Vec<String>, ModelError> {
-    let refused = |message: String| Err(ModelError::setting(path, "serves", message));
-    if written.is_empty() {
-        return refused("no treatment machine name is given".to_owned());
-    }
-    let mut names: Vec<String> = Vec::new();
-    for name in written.iter().map(|name| name.trim()) {
-        if name.is_empty() {
-            return refused("a treatment machine name is empty".to_owned());
-        }
-        if names.iter().any(|known| known == name) {
-            return refused(format!("`{name}` is given twice"));
-        }
-        names.push(name.to_owned());
-    }
-    Ok(names)
 }
 
 fn upper_axis(path: &Path, jaws: &[JawEntry]) -> Result<super::JawAxis, ModelError> {

@@ -1,10 +1,15 @@
-//! `machine.toml` as written: its keys, units and ranges. Joining it with the
-//! tables, and rules over several keys, are for `load_machine` and `load_beam`.
+//! `machine.toml` as written: its keys. The range of each value is in
+//! `machine_value`; rules over several keys, and the tables, are for
+//! `load_machine`, `load_beam` and `load_tables`.
 
-use serde::{Deserialize, Deserializer, de};
+use serde::Deserialize;
 
+use super::machine_value::{
+    date, device_distance, device_travel, exchange_k, gantry, leaf_end_offset, open_transmission,
+    opening, photon_energy, positive_depth, proof_dose, reference_output, source_axis_distance,
+    source_surface_distance, spread, surface_distance, text, texts, transmission,
+};
 use super::{DataOrigin, DepthInterpolation, JawAxis, OffAxisKind};
-use crate::quantity::Quantity;
 
 /// The schema that this program reads.
 pub(super) const SCHEMA: i64 = 1;
@@ -20,6 +25,7 @@ pub(super) struct SchemaOnly {
 pub(super) struct MachineFile {
     #[serde(rename = "schema")]
     pub(super) _schema: i64,
+    #[serde(deserialize_with = "texts")]
     pub(super) serves: Vec<String>,
     #[serde(deserialize_with = "source_axis_distance")]
     pub(super) sad_cm: f64,
@@ -121,7 +127,7 @@ pub(super) struct BeamEntry {
     pub(super) radiation: RadiationEntry,
     #[serde(deserialize_with = "photon_energy")]
     pub(super) energy_mv: f64,
-    #[serde(default)]
+    #[serde(default, deserialize_with = "texts")]
     pub(super) fluence_mode_ids: Vec<String>,
     #[serde(deserialize_with = "exchange_k")]
     pub(super) exchange_k: f64,
@@ -250,105 +256,4 @@ pub(super) struct ProofEntry {
     pub(super) depth_cm: f64,
     #[serde(deserialize_with = "proof_dose")]
     pub(super) measured_cgy_per_mu: f64,
-}
-
-/// A non-empty text, trimmed.
-fn text<'de, D: Deserializer<'de>>(input: D) -> Result<String, D::Error> {
-    let text = String::deserialize(input)?.trim().to_owned();
-    if text.is_empty() {
-        return Err(de::Error::custom("the text is empty"));
-    }
-    Ok(text)
-}
-
-/// A TOML date without a time, such as 2026-11-02.
-fn date<'de, D: Deserializer<'de>>(input: D) -> Result<jiff::civil::Date, D::Error> {
-    let stamp = toml::value::Datetime::deserialize(input)?;
-    let (Some(date), None) = (stamp.date, stamp.time) else {
-        return Err(de::Error::custom("a date such as 2026-11-02 is wanted"));
-    };
-    i16::try_from(date.year)
-        .ok()
-        .zip(i8::try_from(date.month).ok())
-        .zip(i8::try_from(date.day).ok())
-        .and_then(|((year, month), day)| jiff::civil::Date::new(year, month, day).ok())
-        .ok_or_else(|| de::Error::custom(format!("{date} is not a date")))
-}
-
-fn within<E: de::Error>(value: f64, (least, greatest): (f64, f64), unit: &str) -> Result<f64, E> {
-    if value >= least && value <= greatest {
-        return Ok(value);
-    }
-    Err(E::custom(format!(
-        "{value} {unit} is outside the credible range {least} to {greatest} {unit}"
-    )))
-}
-
-macro_rules! credible {
-    ($($name:ident: $quantity:expr, $zero:ident;)*) => {$(
-        fn $name<'de, D: Deserializer<'de>>(input: D) -> Result<f64, D::Error> {
-            let value = f64::deserialize(input)?;
-            if Zero::$zero == Zero::Refused && value == 0.0 {
-                return Err(de::Error::custom("0 is not possible here"));
-            }
-            $quantity.objection(value).map_or(Ok(value), |text| Err(de::Error::custom(text)))
-        }
-    )*};
-}
-
-macro_rules! optional {
-    ($($name:ident: $of:ident;)*) => {$(
-        fn $name<'de, D: Deserializer<'de>>(input: D) -> Result<Option<f64>, D::Error> {
-            $of(input).map(Some)
-        }
-    )*};
-}
-
-macro_rules! bounded {
-    ($($(#[$why:meta])* $name:ident: $least:expr, $greatest:expr, $unit:expr;)*) => {$(
-        $(#[$why])*
-        fn $name<'de, D: Deserializer<'de>>(input: D) -> Result<f64, D::Error> {
-            within(f64::deserialize(input)?, ($least, $greatest), $unit)
-        }
-    )*};
-}
-
-/// Whether zero is a possible value of a quantity whose range starts at it.
-#[derive(PartialEq, Eq)]
-enum Zero {
-    Possible,
-    Refused,
-}
-
-credible! {
-    source_axis_distance: Quantity::SourceAxisDistance, Refused;
-    surface_distance: Quantity::SourceSurfaceDistance, Refused;
-    mounted_distance: Quantity::DeviceDistance, Refused;
-    positive_depth: Quantity::Depth, Refused;
-    photon_energy: Quantity::PhotonEnergy, Refused;
-    reference_output: Quantity::ReferenceOutput, Refused;
-    transmission: Quantity::Transmission, Possible;
-    /* A tray or couch that stops the beam is a mistake. */
-    open_transmission: Quantity::Transmission, Refused;
-}
-
-optional! {
-    source_surface_distance: surface_distance;
-    device_distance: mounted_distance;
-    device_travel: travel;
-}
-
-bounded! {
-    /// Travel from the axis, as the credible device positions.
-    travel: 0.0, Quantity::DevicePosition.range().greatest, "cm";
-    /// An opening: both jaws fully out.
-    opening: 0.5, 2.0 * Quantity::DevicePosition.range().greatest, "cm";
-    /// Published values lie between 1 and 1.9 (common practice); this only catches slips.
-    exchange_k: 0.3, 4.0, "";
-    /// Dosimetric leaf gaps of 0.7 to 2.3 mm are in use, so half of that per leaf end (common practice).
-    leaf_end_offset: -0.2, 0.5, "cm";
-    gantry: 0.0, 360.0, "degrees";
-    /// Above 10 per cent no beam could be verified with it.
-    spread: 0.0, 10.0, "per cent";
-    proof_dose: 0.01, 3.0, "cGy/MU";
 }

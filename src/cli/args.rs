@@ -25,6 +25,9 @@ pub(super) enum Command {
     /// Calculate one field typed by hand, every factor shown
     #[command(allow_negative_numbers = true, after_help = FIELD_HELP)]
     Field(Box<FieldArguments>),
+    /// A beam model: its consistency, its curves, PDD to TPR and back
+    #[command(subcommand)]
+    Model(ModelCommand),
     /// List the plan checks, each with its text
     Checks,
 }
@@ -95,6 +98,64 @@ pub(super) struct ReadArguments {
     /// As JSON, everything, one document a file
     #[arg(long)]
     pub(super) json: bool,
+}
+
+#[derive(Debug, Subcommand)]
+pub(super) enum ModelCommand {
+    /// Check models: shape, ranges, plausibility, proof; status 1 when a person has to look
+    Check(ModelCheckArguments),
+    /// Write a model's curves and single numbers as one page
+    Show(ModelShowArguments),
+    /// Print a depth table worked out from the measured one, as CSV
+    Derive(DeriveArguments),
+}
+
+#[derive(Debug, Args)]
+pub(super) struct ModelCheckArguments {
+    /// Model folders, or folders of models [default: every model of --models]
+    #[arg(value_name = "FOLDER")]
+    pub(super) folders: Vec<PathBuf>,
+    #[command(flatten)]
+    pub(super) common: CommonArguments,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct ModelShowArguments {
+    /// Name of the model's folder, or of a treatment machine that it serves
+    #[arg(value_name = "NAME")]
+    pub(super) model: String,
+    #[command(flatten)]
+    pub(super) common: CommonArguments,
+    /// The page to write [default: counterfoil-model-NAME.html]
+    #[arg(long, value_name = "FILE")]
+    pub(super) out: Option<PathBuf>,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct DeriveArguments {
+    #[command(flatten)]
+    pub(super) common: CommonArguments,
+    /// Treatment machine name
+    #[arg(long, value_name = "NAME")]
+    pub(super) machine: String,
+    /// Energy, such as 6 or 6-FFF
+    #[arg(long, value_name = "LABEL")]
+    pub(super) energy: String,
+    /// What to derive
+    #[arg(long, value_enum, value_name = "KIND")]
+    pub(super) to: DerivedKind,
+    /// The SSD of a PDD, cm
+    #[arg(long, value_name = "CM")]
+    pub(super) ssd: Option<f64>,
+}
+
+/// What to derive.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub(super) enum DerivedKind {
+    /// Tissue-phantom ratio
+    Tpr,
+    /// Percent depth dose at --ssd
+    Pdd,
 }
 
 const FIELD_HELP: &str = "\

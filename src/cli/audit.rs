@@ -7,12 +7,14 @@ use std::path::{Path, PathBuf};
 use anyhow::{Context, bail};
 
 use super::args::{AuditArguments, FailOn};
+use super::clock::started;
 use super::exit::Exit;
 use super::progress;
 use super::settings::{Effective, effective, load};
 use super::summary::write_summary;
 use crate::audit::ModelUse;
 use crate::batch::{self, BatchRequest, RunFacts, Tally, read_depth_table};
+use crate::beam_model::{ModelSet, ModelSeverity, check_machine};
 use crate::dose::DepthRow;
 use crate::intake::{IntakeError, find_files, paths_from_list};
 use crate::quantity::sha256_hex;
@@ -30,6 +32,7 @@ pub(super) fn run(
         return Ok(Exit::Within);
     }
     let models = load(&effective.models_folder)?;
+    refuse_faulty_models(&models)?;
     refuse_foreign_folder(&arguments.out, arguments.force)?;
     let depth_rows = arguments
         .depths
@@ -89,6 +92,23 @@ fn paths(arguments: &AuditArguments) -> anyhow::Result<Vec<PathBuf>> {
     Ok(paths)
 }
 
+/// A model that is certainly wrong would make wrong verdicts.
+fn refuse_faulty_models(models: &ModelSet) -> anyhow::Result<()> {
+    let today = started()?.date();
+    for machine in &models.machines {
+        let error = check_machine(machine, today)
+            .into_iter()
+            .find(|finding| finding.severity == ModelSeverity::Error);
+        if let Some(error) = error {
+            bail!(
+                "beam model {}: {error}; `counterfoil model check` tells all, correct the model or take it out",
+                machine.name
+            );
+        }
+    }
+    Ok(())
+}
+
 fn refuse_foreign_folder(folder: &Path, force: bool) -> anyhow::Result<()> {
     if let TargetState::Foreign { example } = target_state(folder)?
         && !force
@@ -133,21 +153,6 @@ fn facts(
         options,
         site_source: effective.site_source.clone(),
     })
-}
-
-/// The time of the run: now, or SOURCE_DATE_EPOCH (seconds since 1970, UTC) for reports that must be repeatable to the byte.
-fn started() -> anyhow::Result<jiff::ZonedDateTime> {
-    match std::env::var("SOURCE_DATE_EPOCH") {
-        Ok(seconds) => {
-            let seconds: i64 = seconds
-                .trim()
-                .parse()
-                .with_context(|| format!("SOURCE_DATE_EPOCH is {seconds:?}, must be seconds"))?;
-            let instant = jiff::Timestamp::from_second(seconds).context("SOURCE_DATE_EPOCH")?;
-            Ok(instant.to_zoned_datetime(jiff::tz::TimeZone::UTC))
-        }
-        Err(_) => Ok(jiff::ZonedDateTime::now().round(jiff::Unit::Second)?),
-    }
 }
 
 const fn fail_on_word(fail_on: FailOn) -> &'static str {

@@ -6,6 +6,7 @@ use anyhow::{Context, bail};
 
 use super::args::{FieldArguments, SidesAt};
 use super::exit::Exit;
+use super::model::named_beam;
 use super::settings::{effective, load};
 use crate::beam_model::{BeamModel, MachineModel, ModelSet, ReferenceOutput, TableKind};
 use crate::dose::{
@@ -178,31 +179,11 @@ fn chosen_model<'a>(
     let Some(name) = &arguments.machine else {
         return Ok(None);
     };
-    let machine = models.machine_for(name).with_context(|| {
-        format!(
-            "no model serves machine {name}; known names: {}",
-            models.known_names().join(", ")
-        )
-    })?;
-    let labels: Vec<&str> = machine
-        .beams
-        .iter()
-        .map(|beam| beam.label.as_str())
-        .collect();
     let energy = arguments
         .energy
         .as_deref()
-        .with_context(|| format!("--energy is needed: {name} has {}", labels.join(", ")))?;
-    let beam = machine
-        .beams
-        .iter()
-        .find(|beam| beam.label == energy)
-        .with_context(|| {
-            format!(
-                "{name} has no energy {energy}; it has {}",
-                labels.join(", ")
-            )
-        })?;
+        .with_context(|| format!("--energy is needed with --machine {name}"))?;
+    let (machine, beam) = named_beam(models, name, energy)?;
     Ok(Some((machine, beam)))
 }
 

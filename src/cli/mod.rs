@@ -5,8 +5,10 @@
 mod args;
 mod audit;
 mod checks;
+mod clock;
 mod exit;
 mod field;
+mod model;
 mod progress;
 mod read;
 mod settings;
@@ -42,6 +44,7 @@ fn run(arguments: Arguments, out: &mut dyn Write, err: &mut dyn Write) -> Exit {
         Command::Audit(audit) => audit::run(audit, out, err),
         Command::Read(read) => read::run(read, out),
         Command::Field(field) => field::run(*field, out),
+        Command::Model(model) => model::run(model, out),
         Command::Checks => checks::run(out),
     };
     result.unwrap_or_else(|error| {

@@ -9,14 +9,17 @@ mod beam;
 mod delivery;
 mod depth;
 mod factors;
+mod field;
 pub mod geometry;
 mod limits;
 mod mayneord;
 mod modifier;
 mod outcome;
 mod placement;
+mod plan_depth;
 mod point;
 mod prerequisite;
+mod proof;
 mod ray;
 mod spread;
 mod technique;
@@ -26,15 +29,15 @@ mod trace;
 pub use aperture::{collimator_square, point_square};
 pub use beam::{BeamRequest, ModelAnswer, calculate_beam};
 pub use depth::DepthRow;
-pub use factors::{
-    FactorError, FieldDepth, FieldInput, FieldModel, Form, Tray, Typed, dose_per_mu,
-};
+pub use factors::dose_per_mu;
+pub use field::{FactorError, FieldDepth, FieldInput, FieldModel, Form, Tray, Typed};
 pub use limits::outside_method;
 pub use mayneord::{Mayneord, mayneord};
 pub use outcome::{
     BeamCalculation, BeamView, BlockOutline, DepthBasis, DepthCandidate, DosePoint, LeafOpening,
     Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares, Technique,
 };
+pub use proof::prove;
 pub use ray::RayPoint;
 pub use spread::expected_spread;
 pub use technique::classify;

@@ -161,8 +161,10 @@ pub struct DepthCandidate {
 #[derive(Clone, Copy, Debug, PartialEq, Serialize)]
 pub struct Squares {
     /// For collimator scatter, at the isocentre plane.
+    #[serde(rename = "collimator_square_cm")]
     pub collimator: CollimatorSquare,
     /// For phantom scatter, at the plane of the point.
+    #[serde(rename = "phantom_square_cm")]
     pub phantom: Option<PointSquare>,
 }
 

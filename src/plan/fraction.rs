@@ -78,7 +78,7 @@ pub struct ReferencedBeam {
 pub enum PointDepthPlace {
     /// At the referenced beam itself.
     ReferencedBeam,
-    /// At the referenced beam, as one of the retired average attributes (300A,008D to 008F).
+    /// At the referenced beam, as averages over the beam (300A,008D to 008F, retired, and 0131).
     RetiredAverage,
     /// In Beam Dose Verification Control Point Sequence (300A,008C), item index from 0.
     VerificationControlPoint(usize),
@@ -99,7 +99,7 @@ pub struct PointDepth {
     pub equivalent_depth_cm: Given<f64>,
     /// Beam Dose Point SSD (300A,008A), cm, along that ray.
     pub ssd_cm: Given<f64>,
-    /// Source to External Contour Distance (300A,0094), cm; not an SSD.
+    /// Beam Dose Point Source to External Contour Distance (300A,0094; its average 0131 in a set of averages), cm; not an SSD.
     pub source_to_external_contour_cm: Given<f64>,
     /// Depth Value Averaging Flag (300A,0093): whether the values are averages over the beam.
     pub averaged: Given<bool>,

@@ -127,8 +127,8 @@ impl Quantity {
             value != 0.0 && scaled >= range.least && scaled <= range.greatest
         };
         match (range.unit, self) {
-            ("cm", _) if would_fit(10.0) => Some("was it written in cm where DICOM has mm?"),
-            ("cm", _) if would_fit(0.1) => Some("was it written in tenths of a millimetre?"),
+            ("cm", _) if would_fit(10.0) => Some("ten times as much would be: was it written in cm where mm are wanted?"),
+            ("cm", _) if would_fit(0.1) => Some("a tenth would be: was it written in mm where cm are wanted?"),
             ("Gy", _) if would_fit(0.01) => Some("was it written in cGy where DICOM has Gy?"),
             (_, Self::PhotonEnergy | Self::ElectronEnergy) if would_fit(0.001) => {
                 Some("was it written in kV or keV where DICOM has MV or MeV?")
@@ -152,7 +152,7 @@ mod tests {
     fn verify_objection_names_the_unit_slip() {
         // A SAD of 1000 mm written as 100: the reader has divided by ten already.
         let text = Quantity::SourceAxisDistance.objection(10.0).unwrap();
-        assert!(text.contains("cm where DICOM has mm"), "{text}");
+        assert!(text.contains("in cm where mm are wanted"), "{text}");
         assert!(Quantity::BeamDose.objection(200.0).unwrap().contains("cGy"));
         assert_eq!(Quantity::SourceAxisDistance.objection(100.0), None);
         assert!(Quantity::Depth.objection(f64::NAN).is_some());

@@ -110,14 +110,15 @@ impl ReportWriter {
     /// # Errors
     /// When the page cannot be rendered or a file cannot be written or renamed.
     pub fn finish(self, summary: &RunSummary) -> Result<Written, ReportError> {
+        // The folder's guard first: bindings go in reverse order, and it must look last.
         let Self {
+            folder,
             beams,
             plans,
             findings,
             files,
             json,
             page,
-            folder,
             ..
         } = self;
         let mut html = folder.file(REPORT_HTML)?;

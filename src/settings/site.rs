@@ -198,9 +198,19 @@ impl Default for ReportSettings {
 #[derive(Clone, Debug, Default, PartialEq, Serialize)]
 pub struct SiteSource {
     /// The file; `None` for the built-in defaults.
+    #[serde(serialize_with = "lossy_path")]
     pub file: Option<PathBuf>,
     /// SHA-256 of the file, hex.
     pub sha256: Option<String>,
+}
+
+/// A path whose name is no UTF-8 must not keep a report from being written.
+fn lossy_path<S: serde::Serializer>(
+    path: &Option<PathBuf>,
+    serializer: S,
+) -> Result<S::Ok, S::Error> {
+    let text = path.as_ref().map(|path| path.to_string_lossy());
+    text.serialize(serializer)
 }
 
 /// Why the settings were refused.

@@ -11,6 +11,8 @@ mod audit;
     reason = "a tool kit: not every deviation is needed by a test yet"
 )]
 mod builder;
+/// The program as a user runs it.
+mod cli;
 /// The calculation of one beam.
 mod dose;
 /// The order of the house, read from the sources.

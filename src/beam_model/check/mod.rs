@@ -3,6 +3,7 @@
 //! cannot be loaded at all is refused earlier; recomputing proof points needs
 //! the dose stage and is not done here.
 
+mod depth_cells;
 mod depth_table;
 mod off_axis;
 mod outlier;
@@ -147,6 +148,7 @@ pub fn check_machine(machine: &MachineModel, today: jiff::civil::Date) -> Vec<Mo
             whole::check_beam(machine, beam),
             quality::check(machine, beam),
             depth_table::check(beam),
+            depth_cells::check(beam),
             output::check(beam),
             off_axis::check(beam),
         ];

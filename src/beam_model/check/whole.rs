@@ -8,6 +8,7 @@ use crate::quantity::tolerance;
 /// Coverage that a department needs for most fields: sides and depths, cm (common practice).
 const SIDES_CM: (f64, f64) = (4.0, 40.0);
 const DEPTH_CM: f64 = 30.0;
+const RADIUS_CM: f64 = 20.0;
 
 /// Depth of maximum by nominal MV, 5 x 5 (IAEA handbook for teachers and students, table 6.I, from memory).
 const USUAL_D_MAX_CM: &[(f64, f64)] = &[
@@ -194,6 +195,17 @@ fn coverage(beam: &BeamModel) -> Vec<ModelFinding> {
                 .in_table(grid),
             );
         }
+    }
+    let off_axis = &beam.off_axis.grid;
+    if let Some(&last) = off_axis.rows().last()
+        && last < RADIUS_CM
+    {
+        findings.push(
+            ModelFinding::note(format!(
+                "reaches {last} cm off the axis; points further out will not be verifiable"
+            ))
+            .in_table(off_axis),
+        );
     }
     findings
 }

@@ -48,6 +48,8 @@ pub(super) fn check_beam(item: &Node<'_, '_>, beam: &Beam, notes: &mut Notes) {
     }
     check_terms(item, beam, notes);
     check_points(item, beam, notes);
+    check_indices(item, beam, notes);
+    check_wedge_numbers(item, beam, notes);
     check_weights(item, beam, notes);
 }
 
@@ -89,6 +91,24 @@ fn check_terms(item: &Node<'_, '_>, beam: &Beam, notes: &mut Notes) {
             NoteKind::Remark,
             Effect::None,
             "the fluence mode is not stated; the beam is taken as one with a flattening filter",
+        );
+    }
+    let unplaced: Vec<&str> = beam
+        .devices
+        .iter()
+        .filter(|device| device.source_distance_cm.is_absent())
+        .map(|device| device.kind.term())
+        .collect();
+    if !unplaced.is_empty() {
+        item.note(
+            notes,
+            tags::BEAM_LIMITING_DEVICE_SEQUENCE,
+            NoteKind::Remark,
+            Effect::None,
+            format!(
+                "the distance from the source is not stated for {}",
+                unplaced.join(", ")
+            ),
         );
     }
     if beam.energy.changes {
@@ -151,6 +171,62 @@ fn check_points(item: &Node<'_, '_>, beam: &Beam, notes: &mut Notes) {
             Effect::BlocksScope,
             "the first control point positions neither jaws nor leaves",
         );
+    }
+}
+
+/// Indices count the control points in the order of the items, which is the
+/// order that inheritance goes by; a count from 1 changes nothing.
+fn check_indices(item: &Node<'_, '_>, beam: &Beam, notes: &mut Notes) {
+    let start = beam
+        .control_points
+        .first()
+        .and_then(|point| point.index.get());
+    let Some(start) = start else {
+        return;
+    };
+    let odd = (i64::from(start)..)
+        .zip(&beam.control_points)
+        .enumerate()
+        .find(|(_, (expected, point))| {
+            point
+                .index
+                .get()
+                .is_some_and(|index| i64::from(index) != *expected)
+        });
+    if let Some((position, (expected, point))) = odd {
+        item.note_values(
+            notes,
+            tags::CONTROL_POINT_SEQUENCE,
+            NoteKind::CountMismatch,
+            Effect::BlocksScope,
+            format!(
+                "the indices of the control points do not follow the order of the items, first at item {position} (from 0): what each takes over from the one before is not certain"
+            ),
+            (
+                point.index.get().map(|index| index.to_string()),
+                Some(expected.to_string()),
+            ),
+        );
+    }
+}
+
+/// Wedge positions refer to wedges by number.
+fn check_wedge_numbers(item: &Node<'_, '_>, beam: &Beam, notes: &mut Notes) {
+    let mut rest = beam.wedges.as_slice();
+    while let [wedge, others @ ..] = rest {
+        if let Some(number) = wedge.number.value()
+            && others.iter().any(|other| other.number == wedge.number)
+        {
+            item.note_values(
+                notes,
+                tags::WEDGE_SEQUENCE,
+                NoteKind::RepeatedNumber,
+                Effect::BlocksScope,
+                format!("wedge number {number} stands more than once in the beam"),
+                (Some(number.to_string()), None),
+            );
+        }
+        rest = others;
     }
 }
 

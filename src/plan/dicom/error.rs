@@ -29,6 +29,12 @@ pub enum ReadError {
         "RT Plan with brachytherapy application setups (300A,0230) and no external beam: nothing to recompute here"
     )]
     BrachyOnly,
+    /// An RT Plan with neither beams nor brachytherapy. A file cut off between
+    /// two elements looks just like it, so it is not passed over as empty.
+    #[error(
+        "the RT Plan has no Beam Sequence (300A,00B0), or an empty one; if it should have beams, the file is cut off: send the plan again"
+    )]
+    NoBeams,
     /// Larger than any plan that is read.
     #[error("{size_bytes} bytes are more than the {limit_bytes} a plan may have; is this a plan?")]
     TooLarge {
@@ -153,7 +159,17 @@ pub enum ReadError {
         /// Limit.
         limit: usize,
     },
-    /// More elements, items, control points or notes than any plan has.
+    /// More beams, devices or control points than any plan has.
+    #[error("more than {limit} {what} in {place}; refused as damaged")]
+    TooManyParts {
+        /// What there is too much of.
+        what: &'static str,
+        /// The sequence, with tag.
+        place: String,
+        /// Limit.
+        limit: usize,
+    },
+    /// More elements or items than any plan has.
     #[error("more than {limit} {what} at byte {offset} ({place}); refused as damaged")]
     TooMany {
         /// What there is too much of.

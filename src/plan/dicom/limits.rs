@@ -59,10 +59,9 @@ fn check(what: &'static str, tag: Tag, found: usize, limit: usize) -> Result<(),
     if found <= limit {
         return Ok(());
     }
-    Err(ReadError::TooMany {
+    Err(ReadError::TooManyParts {
         what,
         place: named(tag),
-        offset: 0,
         limit,
     })
 }

@@ -3,12 +3,14 @@
 //! A bounded walk frames the bytes first; then the parts of a plan are read
 //! from its tree, each value with its standing. Nothing here calculates.
 
+mod aperture;
 mod beam;
 mod complete;
 mod control_point;
 mod device;
 mod error;
 mod fraction;
+mod framing;
 mod identity;
 mod kind;
 mod limits;
@@ -23,6 +25,7 @@ mod source;
 mod text;
 mod tree;
 mod walk;
+mod wedge_position;
 
 pub use error::ReadError;
 pub use kind::{FileKind, Identified, identify};
@@ -110,10 +113,11 @@ fn check_kind(
             sop_class_uid: class.map_or("not stated", String::as_str).to_owned(),
         });
     }
-    if beams == 0 && set.item_count(tags::APPLICATION_SETUP_SEQUENCE) > 0 {
-        return Err(ReadError::BrachyOnly);
+    match (beams, set.item_count(tags::APPLICATION_SETUP_SEQUENCE)) {
+        (0, 0) => Err(ReadError::NoBeams),
+        (0, _) => Err(ReadError::BrachyOnly),
+        _ => Ok(()),
     }
-    Ok(())
 }
 
 /// Notes on the file as a whole.
@@ -153,15 +157,7 @@ fn note_file(
             message.to_owned(),
         );
     }
-    let beams = set.item_count(tags::BEAM_SEQUENCE);
-    if beams == 0 {
-        let message = "the plan has no beams";
-        add(
-            NoteKind::MissingValue,
-            tags::BEAM_SEQUENCE,
-            message.to_owned(),
-        );
-    } else if set.item_count(tags::APPLICATION_SETUP_SEQUENCE) > 0 {
+    if set.item_count(tags::APPLICATION_SETUP_SEQUENCE) > 0 {
         let message = "the plan also has brachytherapy application setups; they are not read";
         let tag = tags::APPLICATION_SETUP_SEQUENCE;
         add(NoteKind::Unsupported, tag, message.to_owned());

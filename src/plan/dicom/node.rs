@@ -187,30 +187,31 @@ impl<'n, 'a> Node<'n, 'a> {
         }
     }
 
-    /// A text value as shown text.
+    /// A text value as shown text, with its standing.
     pub(super) fn text(&self, tag: Tag, effect: Effect, notes: &mut Notes) -> Given<String> {
-        match self.element(tag, effect, notes) {
-            Reading::Value(element) => self.text_of(element, tag, notes),
-            _ => Given::Absent,
-        }
+        self.text_reading(tag, effect, notes).given()
     }
 
-    fn text_of(&self, element: &Element<'a>, tag: Tag, notes: &mut Notes) -> Given<String> {
-        let Value::Bytes(bytes) = element.value else {
-            self.note(
-                notes,
-                tag,
-                NoteKind::MalformedValue,
-                Effect::None,
-                "a sequence stands where text belongs",
-            );
-            return Given::Absent;
+    /// A text value as shown text.
+    pub(super) fn text_reading(
+        &self,
+        tag: Tag,
+        effect: Effect,
+        notes: &mut Notes,
+    ) -> Reading<String> {
+        let element = match self.element(tag, effect, notes) {
+            Reading::Value(element) => element,
+            Reading::Nothing => return Reading::Nothing,
+            Reading::Unusable => return Reading::Unusable,
         };
-        let text = self.charset.decode(element.vr, bytes);
-        if text.is_empty() {
-            Given::Absent
-        } else {
-            Given::stated(text)
+        let Value::Bytes(bytes) = element.value else {
+            let message = "a sequence stands where text belongs";
+            self.note(notes, tag, NoteKind::MalformedValue, effect, message);
+            return Reading::Unusable;
+        };
+        match self.charset.decode(element.vr, bytes) {
+            text if text.is_empty() => Reading::Nothing,
+            text => Reading::Value(text),
         }
     }
 
@@ -241,9 +242,11 @@ impl<'n, 'a> Node<'n, 'a> {
         }
         if let Some(quantity) = wanted.quantity {
             let range = quantity.range();
+            let credible = |value: &f64| *value >= range.least && *value <= range.greatest;
             let objection = out
                 .iter()
-                .find_map(|&value| quantity.objection(value).map(|text| (value, text)));
+                .find(|value| !credible(value))
+                .and_then(|&value| quantity.objection(value).map(|text| (value, text)));
             if let Some((value, objection)) = objection {
                 self.note_values(
                     notes,

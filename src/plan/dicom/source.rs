@@ -11,9 +11,10 @@ use flate2::{Decompress, FlushDecompress, Status};
 use super::error::ReadError;
 use super::tree::Syntax;
 
-/// Largest file, and largest inflated data set, that is read as a plan. The
-/// largest plans known are a tenth of it.
-pub(super) const MAX_PLAN_BYTES: usize = 64 << 20;
+/// Largest file, and largest inflated data set, that is read as a plan: some
+/// 150 arcs. Numbers grow to four times their text at most, which keeps the
+/// memory for one file under 200 MB.
+pub(super) const MAX_PLAN_BYTES: usize = 32 << 20;
 
 /// What of an inflated data set is enough to tell the SOP class.
 pub(super) const IDENTIFY_BYTES: usize = 1 << 20;

@@ -7,7 +7,11 @@
 use dicom_core::{Tag, VR};
 
 use super::error::ReadError;
-use super::name::{named, push_step, standard_vr};
+use super::framing::{
+    Decoded, Header, ITEM, ITEM_END, SEQUENCE_END, UNDEFINED, decode_header, decode_length,
+    is_impossible, standard_vr_of_unknown, unit_bytes,
+};
+use super::name::{named, push_step};
 use super::tree::{DataSet, Element, Order, Syntax, Value};
 
 /// Sequences in sequences. Real plans use six at most.
@@ -19,11 +23,6 @@ pub(super) const MAX_ITEMS: usize = 10_000;
 /// Repeats and disorder that are kept for notes.
 const MAX_IRREGULARITIES: usize = 100;
 
-const UNDEFINED: u32 = u32::MAX;
-const ITEM: Tag = Tag(0xFFFE, 0xE000);
-const ITEM_END: Tag = Tag(0xFFFE, 0xE00D);
-const SEQUENCE_END: Tag = Tag(0xFFFE, 0xE0DD);
-
 /// Something legible but not as the standard has it.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub(super) enum Irregularity {
@@ -31,14 +30,6 @@ pub(super) enum Irregularity {
     Repeated { place: String },
     /// A tag smaller than the one before it. Attribute path with tag.
     OutOfOrder { place: String },
-}
-
-/// An element header.
-#[derive(Clone, Copy, Debug)]
-pub(super) struct Header {
-    pub(super) tag: Tag,
-    vr: VR,
-    pub(super) length: u32,
 }
 
 /// How a run of elements ends.
@@ -263,45 +254,19 @@ impl<'a> Walk<'a> {
     /// Reads a header and moves behind it.
     fn header(&mut self, syntax: Syntax, limit: usize) -> Result<Header, ReadError> {
         let start = self.position;
-        let [a, b, c, d, e, f, g, h] = self.take::<8>(limit)?;
-        let (group, number) = match syntax {
-            Syntax::ExplicitBig => ([a, b], [c, d]),
-            _ => ([b, a], [d, c]),
-        };
-        let tag = Tag(u16::from_be_bytes(group), u16::from_be_bytes(number));
-        let long = |bytes: [u8; 4]| match syntax {
-            Syntax::ExplicitBig => u32::from_be_bytes(bytes),
-            _ => u32::from_le_bytes(bytes),
-        };
-        if tag.group() == 0xFFFE {
-            let length = long([e, f, g, h]);
-            return Ok(Header {
-                tag,
-                vr: VR::UN,
-                length,
-            });
-        }
-        if syntax == Syntax::ImplicitLittle {
-            let length = long([e, f, g, h]);
-            let vr = match length {
-                UNDEFINED => VR::SQ,
-                _ => standard_vr(tag).unwrap_or(VR::UN),
-            };
-            return Ok(Header { tag, vr, length });
-        }
-        let Some(vr) = VR::from_binary([e, f]) else {
-            return Err(ReadError::UnknownVr {
-                place: self.place(tag),
-                offset: start,
-                vr: [e, f].escape_ascii().to_string(),
-            });
-        };
-        let length = if has_long_length(vr) {
-            long(self.take::<4>(limit)?)
-        } else if syntax == Syntax::ExplicitBig {
-            u32::from(u16::from_be_bytes([g, h]))
-        } else {
-            u32::from(u16::from_le_bytes([g, h]))
+        let (tag, vr, length) = match decode_header(self.take::<8>(limit)?, syntax) {
+            Decoded::Whole(header) => return Ok(header),
+            Decoded::LengthFollows(tag, vr) => {
+                let length = decode_length(self.take::<4>(limit)?, syntax);
+                (tag, vr, length)
+            }
+            Decoded::UnknownVr(tag, letters) => {
+                return Err(ReadError::UnknownVr {
+                    place: self.place(tag),
+                    offset: start,
+                    vr: letters.escape_ascii().to_string(),
+                });
+            }
         };
         Ok(Header { tag, vr, length })
     }
@@ -424,48 +389,5 @@ impl<'a> Walk<'a> {
         }
         path.push_str(&named(tag));
         path
-    }
-}
-
-/// Tags that no data set may hold: command and directory groups, the file
-/// meta group, delimiters out of place, and groups the standard reserves.
-const fn is_impossible(tag: Tag) -> bool {
-    matches!(
-        tag.0,
-        0x0000..=0x0003 | 0x0005 | 0x0006 | 0x0007 | 0xFFFE | 0xFFFF
-    )
-}
-
-fn standard_vr_of_unknown(vr: VR, tag: Tag) -> Option<VR> {
-    if vr == VR::UN { standard_vr(tag) } else { None }
-}
-
-/// Whether an explicit header has two reserved bytes and a 32-bit length.
-const fn has_long_length(vr: VR) -> bool {
-    matches!(
-        vr,
-        VR::OB
-            | VR::OD
-            | VR::OF
-            | VR::OL
-            | VR::OV
-            | VR::OW
-            | VR::SQ
-            | VR::SV
-            | VR::UC
-            | VR::UN
-            | VR::UR
-            | VR::UT
-            | VR::UV
-    )
-}
-
-/// Size of one value of a binary representation; 1 for the others.
-const fn unit_bytes(vr: VR) -> usize {
-    match vr {
-        VR::US | VR::SS | VR::OW => 2,
-        VR::AT | VR::UL | VR::SL | VR::FL | VR::OF | VR::OL => 4,
-        VR::FD | VR::OD | VR::SV | VR::UV | VR::OV => 8,
-        _ => 1,
     }
 }

@@ -16,6 +16,8 @@ pub(super) struct AttentionLine {
     pub(super) beam: String,
     pub(super) machine: String,
     pub(super) deviation: String,
+    /// The deviation is a number that verifies nothing.
+    pub(super) no_verification: bool,
     pub(super) why: String,
     /// Running number of the plan; `None` for a file without one.
     pub(super) entry: Option<u64>,
@@ -66,6 +68,7 @@ pub(super) fn file_line(file: &FileEntry) -> AttentionLine {
         beam: MISSING.to_owned(),
         machine: MISSING.to_owned(),
         deviation: MISSING.to_owned(),
+        no_verification: false,
         why: clipped(&file.message, REASON_LENGTH),
         entry: None,
         beam_position: None,
@@ -80,6 +83,7 @@ fn plan_line(plan: &PlanEntry, entry: u64) -> AttentionLine {
         beam: "plan".to_owned(),
         machine: clipped(&text_or_dash(plan.machine.as_ref()), NAME_LENGTH),
         deviation: MISSING.to_owned(),
+        no_verification: false,
         why: plan
             .findings
             .iter()
@@ -135,7 +139,7 @@ fn finding_line(plan: &PlanEntry, entry: u64) -> AttentionLine {
 fn beam_line(plan: &PlanEntry, beam: &BeamEntry, entry: u64, position: usize) -> AttentionLine {
     let deviation = match (judged_percent(beam), beam.deviation_percent) {
         (Some(percent), _) if is_result(beam.verdict) => format!("{} %", signed(percent, 1)),
-        (_, Some(percent)) => format!("[{} %] not a verification", signed(percent, 1)),
+        (_, Some(percent)) => format!("[{} %]", signed(percent, 1)),
         _ => MISSING.to_owned(),
     };
     let why = match beam.reasons.as_slice() {
@@ -151,6 +155,7 @@ fn beam_line(plan: &PlanEntry, beam: &BeamEntry, entry: u64, position: usize) ->
         status: status(beam.verdict),
         beam: beam_name(beam),
         machine: clipped(&text_or_dash(beam.machine.as_ref()), NAME_LENGTH),
+        no_verification: !is_result(beam.verdict) && beam.deviation_percent.is_some(),
         deviation,
         why,
         beam_position: Some(position),

@@ -5,7 +5,7 @@ use super::beams_eye::{self, Picture};
 use super::deviation::{self, Deviation, Standing};
 use super::trace_view::{self, TraceView};
 use super::words::{Status, is_result, judgement, status};
-use crate::audit::{BeamEntry, Verdict};
+use crate::audit::{BeamEntry, Judgement, Verdict};
 use crate::dose::{DepthCandidate, DosePoint};
 use crate::report::number::{MISSING, fixed, fixed_or_dash, short_or_dash, signed, text_or_dash};
 use crate::report::table::judged_percent;
@@ -30,6 +30,8 @@ pub(super) struct BeamRowView {
     pub(super) independent: String,
     pub(super) deviation: String,
     pub(super) no_verification: bool,
+    /// What was judged when it was not the deviation itself.
+    pub(super) judged: Option<String>,
     pub(super) status: Status,
 }
 
@@ -66,6 +68,8 @@ pub(super) struct SpreadView {
 pub(super) struct BeamView {
     pub(super) row: BeamRowView,
     pub(super) open: bool,
+    /// Whatever number the beam has verifies nothing.
+    pub(super) not_a_result: bool,
     pub(super) picture: Option<Picture>,
     pub(super) deviation_svg: Option<String>,
     pub(super) deviation_words: String,
@@ -141,7 +145,26 @@ pub(super) fn row(beam: &BeamEntry, id: String, has_detail: bool) -> BeamRowView
         ),
         no_verification: !result
             && (beam.independent_dose_gy.is_some() || beam.deviation_percent.is_some()),
+        judged: judged_otherwise(beam),
         status: status(beam.verdict),
+    }
+}
+
+fn judged_otherwise(beam: &BeamEntry) -> Option<String> {
+    match beam.judgement.as_ref()? {
+        Judgement::Alone => None,
+        Judgement::ShareOfTotal {
+            percent_of_total, ..
+        } => Some(format!(
+            "judged: {} % of total",
+            signed(*percent_of_total, 1)
+        )),
+        Judgement::FractionSum {
+            sum_deviation_percent,
+        } => Some(format!(
+            "judged: sum {} %",
+            signed(*sum_deviation_percent, 1)
+        )),
     }
 }
 
@@ -174,6 +197,7 @@ pub(super) fn view(beam: &BeamEntry, id: &str) -> BeamView {
     let spread = calculation.spread.as_ref();
     BeamView {
         row: row(beam, id.to_owned(), true),
+        not_a_result: !is_result(beam.verdict),
         open: !matches!(beam.verdict, Verdict::Within | Verdict::NotTreated),
         picture: beams_eye::picture(&calculation.view, &format!("{id}-view")),
         deviation_words: drawn.as_ref().map_or_else(String::new, deviation::words),
@@ -271,13 +295,13 @@ fn point_facts(point: &DosePoint) -> Vec<Fact> {
     }
     if let Some([x, y]) = point.projected_cm {
         facts.push(fact(
-            "projected to the isocentre plane",
+            "at the isocentre plane",
             format!("({}, {}) cm", signed(x, 2), signed(y, 2)),
         ));
     }
     if let Some(distance) = point.spd_cm {
         facts.push(fact(
-            "source-point distance along the axis",
+            "source-point distance",
             format!("{} cm", fixed(distance, 2)),
         ));
     }
@@ -292,12 +316,12 @@ fn square_facts(beam: &BeamEntry) -> Vec<Fact> {
         return Vec::new();
     };
     let mut facts = vec![Fact {
-        name: "equivalent square, collimator scatter, isocentre plane",
+        name: "square, collimator scatter",
         value: format!("{} cm", fixed(squares.collimator.side_cm(), 2)),
     }];
     if let Some(phantom) = squares.phantom {
         facts.push(Fact {
-            name: "equivalent square, phantom scatter, plane of the point",
+            name: "square, phantom scatter",
             value: format!("{} cm", fixed(phantom.side_cm(), 2)),
         });
     }

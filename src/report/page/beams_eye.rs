@@ -2,17 +2,22 @@
 //! dose point at the isocentre plane, seen from the source in the collimator
 //! system. Where things are was worked out in `dose`.
 
-use crate::dose::{BeamView, LeafOpening};
+use super::words::counted;
+use crate::dose::{BeamView, BlockOutline, LeafOpening};
 use crate::report::number::{short, signed};
 use crate::report::svg::{Anchor, Drawing, Scale};
 
 /// Half-widths of the picture, cm: few, so that pictures can be compared.
 const HALF_WIDTHS_CM: [f64; 4] = [6.0, 11.0, 16.0, 21.0];
+/// An outline with more points is drawn with every second, third ... of them.
+const MOST_POINTS: usize = 1000;
+/// A bank with more leaf pairs is drawn with the first of them.
+const MOST_PAIRS: usize = 400;
 const PLOT: f64 = 240.0;
 const LEFT: f64 = 34.0;
 const TOP: f64 = 24.0;
 const WIDTH: f64 = LEFT + PLOT + 8.0;
-const HEIGHT: f64 = TOP + PLOT + 34.0;
+const HEIGHT: f64 = TOP + PLOT + 36.0;
 
 /// A picture and what stands under it.
 #[derive(Clone, Debug)]
@@ -100,7 +105,7 @@ fn draw_openings(drawing: &mut Drawing, axes: &Axes, view: &BeamView) {
     if x2 > x1 && y2 > y1 {
         drawing.rectangle(inside, axes.at([x1, y1]), axes.at([x2, y2]));
     }
-    for leaf in single_bank.unwrap_or_default() {
+    for leaf in single_bank.unwrap_or_default().iter().take(MOST_PAIRS) {
         if let Some([from, to]) = within(leaf, [x1, x2], [y1, y2]) {
             drawing.rectangle("bev-gap", axes.at(from), axes.at(to));
         }
@@ -109,7 +114,7 @@ fn draw_openings(drawing: &mut Drawing, axes: &Axes, view: &BeamView) {
         // Several banks are open where all are: outlines, because a fill would show their union.
         for (number, bank) in view.leaf_banks.iter().enumerate() {
             let class = if number == 0 { "bev-bank" } else { "bev-bank2" };
-            for leaf in bank {
+            for leaf in bank.iter().take(MOST_PAIRS) {
                 if let Some([from, to]) = within(leaf, [x1, x2], [y1, y2]) {
                     drawing.rectangle(class, axes.at(from), axes.at(to));
                 }
@@ -130,7 +135,9 @@ fn within(leaf: &LeafOpening, x: [f64; 2], y: [f64; 2]) -> Option<[[f64; 2]; 2]>
 
 fn draw_blocks(drawing: &mut Drawing, axes: &Axes, view: &BeamView) {
     for block in &view.blocks {
-        let points: Vec<[f64; 2]> = block.outline_cm.iter().map(|p| axes.at(*p)).collect();
+        let step = block.outline_cm.len().div_ceil(MOST_POINTS).max(1);
+        let points = block.outline_cm.iter().step_by(step);
+        let points: Vec<[f64; 2]> = points.map(|point| axes.at(*point)).collect();
         let class = if block.shields_inside {
             "bev-block"
         } else {
@@ -152,8 +159,7 @@ fn draw_axes(drawing: &mut Drawing, axes: &Axes) {
         let along_y = axes.at([-half, tick_cm]);
         drawing.line("tick", along_x, [along_x[0], along_x[1] + length]);
         drawing.line("tick", along_y, [along_y[0] - length, along_y[1]]);
-        let name_is_here = tick_cm + 5.0 > half;
-        if labelled && !name_is_here {
+        if labelled {
             let label = short(tick_cm, 0);
             drawing.text(
                 "label",
@@ -171,7 +177,7 @@ fn draw_axes(drawing: &mut Drawing, axes: &Axes) {
     }
     drawing.text(
         "label",
-        [LEFT + PLOT, TOP + PLOT + 19.0],
+        [LEFT + PLOT, TOP + PLOT + 32.0],
         Anchor::End,
         "x_b / cm",
     );
@@ -225,10 +231,17 @@ fn caption(view: &BeamView, half_cm: f64) -> String {
     let shields = shields.count();
     let apertures = view.blocks.len() - shields;
     if shields > 0 {
-        parts.push(format!("{shields} block outline(s), shielded inside"));
+        let outlines = counted(shields as u64, "block outline", "block outlines");
+        parts.push(format!("{outlines}, shielded inside"));
     }
     if apertures > 0 {
-        parts.push(format!("{apertures} aperture outline(s), shielded outside"));
+        let outlines = counted(apertures as u64, "aperture outline", "aperture outlines");
+        parts.push(format!("{outlines}, shielded outside"));
+    }
+    let coarse = |block: &BlockOutline| block.outline_cm.len() > MOST_POINTS;
+    if view.leaf_banks.iter().any(|bank| bank.len() > MOST_PAIRS) || view.blocks.iter().any(coarse)
+    {
+        parts.push("drawn with a part of its points".to_owned());
     }
     if let Some([x, y]) = view.point_cm {
         let place = format!("dose point at ({}, {}) cm", signed(x, 2), signed(y, 2));

@@ -74,28 +74,28 @@ fn draw_bands(drawing: &mut Drawing, scale: Scale, deviation: &Deviation) {
     if let Some(tolerance) = deviation.tolerance_percent {
         band(drawing, "band-tolerance", tolerance);
     }
-    let edges = [
-        (deviation.tolerance_percent, "tolerance"),
-        (deviation.action_percent, "action"),
-    ];
-    let apart = match (deviation.tolerance_percent, deviation.action_percent) {
-        (Some(tolerance), Some(action)) => scale.at(action) - scale.at(tolerance) > 48.0,
-        _ => true,
+    // Words of the tolerance run inward and those of the action level outward, so that they never meet.
+    let room = deviation
+        .tolerance_percent
+        .map_or(0.0, |tolerance| scale.at(tolerance) - scale.at(0.0));
+    let tolerance_name = match room {
+        room if room >= 58.0 => "tolerance",
+        room if room >= 24.0 => "tol.",
+        _ => "",
     };
-    for (level, name) in edges {
+    let inward = [Anchor::Start, Anchor::End];
+    let outward = [Anchor::End, Anchor::Start];
+    let edges = [
+        (deviation.tolerance_percent, tolerance_name, inward),
+        (deviation.action_percent, "action", outward),
+    ];
+    for (level, name, anchors) in edges {
         let Some(level) = level else { continue };
-        for side in [-level, level] {
+        for (side, anchor) in [-level, level].into_iter().zip(anchors) {
             let x = scale.at(side);
-            drawing.line("band-edge", [x, BAND[0] - 4.0], [x, BAND[1]]);
-        }
-        if apart || name == "action" {
-            for side in [-level, level] {
-                drawing.text(
-                    "label",
-                    [scale.at(side), BAND[0] - 8.0],
-                    Anchor::Middle,
-                    name,
-                );
+            drawing.line("band-edge", [x, BAND[0] - 5.0], [x, BAND[1]]);
+            if !name.is_empty() {
+                drawing.text("label", [x, BAND[0] - 8.0], anchor, name);
             }
         }
     }

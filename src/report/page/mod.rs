@@ -30,6 +30,7 @@ use attention::AttentionLine;
 use left_out::LeftOut;
 use plan_view::PlanLine;
 use run_view::RunView;
+pub(super) use style::{STYLE, policy};
 use urgency::{Class, Urgency, Worst};
 
 /// The page names so many things that need a person; the tables have all.

@@ -1,5 +1,7 @@
 //! One plan in full, in finished strings.
 
+use std::cmp::Reverse;
+
 use askama::Template;
 
 use super::attention::plan_name;
@@ -13,12 +15,17 @@ use crate::settings::Severity;
 /// A plan shows the detail of at most so many beams, the most urgent first; the table has all.
 pub(super) const BEAMS_IN_FULL: usize = 40;
 
+/// A plan shows at most so many findings, the most severe.
+const FINDINGS_SHOWN: usize = 100;
+
 /// A plan in full.
 #[derive(Debug, Template)]
 #[template(path = "plan.html", config = "src/report/askama.toml")]
 pub(super) struct PlanView {
     id: String,
     label: String,
+    /// The label when it is too long for the heading.
+    whole_label: Option<String>,
     patient_id: String,
     patient_name: Option<String>,
     file: String,
@@ -39,6 +46,7 @@ pub(super) struct PlanView {
     details: Vec<BeamView>,
     details_left_out: Option<String>,
     findings: Vec<FindingView>,
+    findings_left_out: Option<String>,
 }
 
 #[derive(Debug)]
@@ -107,6 +115,10 @@ pub(super) fn view(plan: &PlanEntry, entry: u64) -> PlanView {
     PlanView {
         id: plan_anchor(entry),
         label: plan_name(plan),
+        whole_label: plan
+            .plan_label
+            .clone()
+            .filter(|label| !label.is_empty() && *label != plan_name(plan)),
         patient_id: text_or_dash(plan.patient_id.as_ref()),
         patient_name: plan.patient_name.clone(),
         file: plan.file.clone(),
@@ -121,7 +133,10 @@ pub(super) fn view(plan: &PlanEntry, entry: u64) -> PlanView {
             || MISSING.to_owned(),
             |dose| format!("{} Gy", fixed(dose, 2)),
         ),
-        worst_beam: signed_or_dash(plan.worst_beam_percent, 1),
+        worst_beam: plan.worst_beam_percent.map_or_else(
+            || MISSING.to_owned(),
+            |percent| format!("{} %", signed(percent, 1)),
+        ),
         sum: plan.sum.as_ref().map(|sum| SumView {
             planned: fixed(sum.planned_dose_gy, 3),
             independent: fixed(sum.independent_dose_gy, 3),
@@ -143,8 +158,33 @@ pub(super) fn view(plan: &PlanEntry, entry: u64) -> PlanView {
                 counted(left_out as u64, "further beam", "further beams")
             )
         }),
-        findings: plan.findings.iter().map(finding_view).collect(),
+        findings: findings(plan),
+        findings_left_out: (plan.findings.len() > FINDINGS_SHOWN).then(|| {
+            format!(
+                "{} are left out here, the least severe; findings.csv has every one.",
+                counted(
+                    (plan.findings.len() - FINDINGS_SHOWN) as u64,
+                    "further finding",
+                    "further findings"
+                )
+            )
+        }),
     }
+}
+
+/// The findings shown: all, or the most severe, in the plan's order.
+fn findings(plan: &PlanEntry) -> Vec<FindingView> {
+    let mut order: Vec<usize> = (0..plan.findings.len()).collect();
+    order.sort_by_key(|place| {
+        let severity = plan.findings.get(*place).map(|finding| finding.severity);
+        (Reverse(severity), *place)
+    });
+    order.truncate(FINDINGS_SHOWN);
+    order.sort_unstable();
+    order
+        .iter()
+        .filter_map(|place| plan.findings.get(*place).map(finding_view))
+        .collect()
 }
 
 fn finding_view(finding: &Finding) -> FindingView {

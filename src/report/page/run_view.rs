@@ -6,6 +6,8 @@ use crate::audit::{Count, ModelUse, Run, RunSummary};
 use crate::report::number::{MISSING, short};
 use crate::settings::Site;
 
+const INPUTS_SHOWN: usize = 50;
+
 /// What was run.
 #[derive(Debug)]
 pub(super) struct RunView {
@@ -56,7 +58,7 @@ pub(super) fn view(run: &Run) -> RunView {
         run_id: run.run_id.clone(),
         version: run.version.clone(),
         started: run.started.clone(),
-        inputs: run.inputs.clone(),
+        inputs: inputs(&run.inputs),
         options: run.options.clone(),
         site_source: run.site_source.file.as_ref().map_or_else(
             || "built-in defaults (no site file)".to_owned(),
@@ -67,6 +69,16 @@ pub(super) fn view(run: &Run) -> RunView {
         settings: settings(&run.site),
         models: run.models.iter().map(model).collect(),
     }
+}
+
+/// The paths as typed: the first of them when a shell has spread a pattern.
+fn inputs(typed: &[String]) -> Vec<String> {
+    let mut shown: Vec<String> = typed.iter().take(INPUTS_SHOWN).cloned().collect();
+    if typed.len() > shown.len() {
+        let more = (typed.len() - shown.len()) as u64;
+        shown.push(format!("and {more} more; audit.json lists them"));
+    }
+    shown
 }
 
 fn levels(site: &Site) -> Vec<LevelView> {

@@ -4,10 +4,10 @@
 use sha2::{Digest, Sha256};
 
 /// The style sheet, as it stands in the page.
-pub(super) const STYLE: &str = include_str!("../templates/page.css");
+pub(in crate::report) const STYLE: &str = include_str!("../templates/page.css");
 
 /// The policy: the style sheet by its hash, everything else refused.
-pub(super) fn policy() -> String {
+pub(in crate::report) fn policy() -> String {
     let hash = base64(&Sha256::digest(STYLE.as_bytes()));
     format!("default-src 'none'; style-src 'sha256-{hash}'; base-uri 'none'; form-action 'none'")
 }

@@ -1,5 +1,6 @@
 //! The trace of factors as a table of finished strings.
 
+use super::words::is_result;
 use crate::audit::BeamEntry;
 use crate::dose::Trace;
 use crate::report::number::{decimals_of, fixed, fixed_or_dash};
@@ -31,18 +32,26 @@ pub(super) struct TraceView {
 /// The view of a beam's trace.
 pub(super) fn view(trace: &Trace, beam: &BeamEntry) -> TraceView {
     let product = fixed(trace.dose_per_mu_cgy, 4);
+    // A number that verifies nothing never looks like a plain result.
+    let shown = |number: String| {
+        if is_result(beam.verdict) {
+            number
+        } else {
+            format!("[{number}]")
+        }
+    };
     let dose_line = beam.planned_mu.map(|mu| {
         format!(
             "{} MU \u{d7} {product} cGy/MU / 100 = {} Gy",
             fixed(mu, 2),
-            fixed_or_dash(beam.independent_dose_gy, 4)
+            shown(fixed_or_dash(beam.independent_dose_gy, 4))
         )
     });
     let meterset_line = beam.planned_dose_gy.map(|dose| {
         format!(
             "{} Gy \u{d7} 100 / {product} cGy/MU = {} MU",
             fixed(dose, 4),
-            fixed_or_dash(beam.independent_mu, 2)
+            shown(fixed_or_dash(beam.independent_mu, 2))
         )
     });
     TraceView {
@@ -70,7 +79,7 @@ pub(super) fn view(trace: &Trace, beam: &BeamEntry) -> TraceView {
                 source: factor.source.clone(),
             })
             .collect(),
-        product,
+        product: shown(product),
         dose_line,
         meterset_line,
     }

@@ -72,6 +72,16 @@ impl Drawing {
         self.body.push_str("\"/>");
     }
 
+    /// An open line through points.
+    pub(in crate::report) fn curve(&mut self, class: &str, points: &[[f64; 2]]) {
+        let _ = write!(self.body, "<polyline class=\"{class}\" points=\"");
+        for (index, point) in points.iter().enumerate() {
+            let space = if index == 0 { "" } else { " " };
+            let _ = write!(self.body, "{space}{},{}", n(point[0]), n(point[1]));
+        }
+        self.body.push_str("\"/>");
+    }
+
     /// A circle.
     pub(in crate::report) fn circle(&mut self, class: &str, centre: [f64; 2], radius: f64) {
         let _ = write!(

@@ -12,13 +12,6 @@ pub(crate) struct Item {
     object: Option<InMemDicomObject>,
 }
 
-/// An item that goes on from an object.
-pub(crate) fn object_item(object: InMemDicomObject) -> Item {
-    Item {
-        object: Some(object),
-    }
-}
-
 impl Item {
     pub(crate) fn new() -> Self {
         Self::default()
@@ -129,7 +122,7 @@ fn vr(tag: Tag) -> VR {
         .map_or(VR::UN, |entry| entry.vr().relaxed())
 }
 
-/// A decimal string of at most 16 characters.
+/// A decimal string of at most 16 characters, without trailing zeros.
 fn decimal(number: f64) -> String {
     let shortest = number.to_string();
     if shortest.len() <= 16 {
@@ -139,5 +132,8 @@ fn decimal(number: f64) -> String {
         .rev()
         .map(|decimals| format!("{number:.decimals$}"))
         .find(|text| text.len() <= 16)
-        .unwrap_or(shortest)
+        .map_or(shortest, |text| match text.contains('.') {
+            true => text.trim_end_matches('0').trim_end_matches('.').to_owned(),
+            false => text,
+        })
 }

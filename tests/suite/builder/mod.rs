@@ -10,8 +10,11 @@ mod encode;
 mod spec;
 mod write;
 
-pub(crate) use element::{Item, object_item};
 pub(crate) use encode::{Encoding, data_set_offset, encode};
+#[allow(
+    unused_imports,
+    reason = "a tool kit: not every part is named by a test yet"
+)]
 pub(crate) use spec::{
     AccessorySpec, ApplicatorSpec, BeamSpec, BlockSpec, BolusSpec, CompensatorSpec, DepthSpec,
     DeviceSpec, DoseReferenceSpec, GroupSpec, PlanSpec, PointSpec, ReferenceSpec, SetupSpec,

@@ -1,6 +1,7 @@
 //! The edges of the method: shown as outside it, with a number where one can be multiplied out.
 
 use counterfoil::dose::{BeamCalculation, FactorName, ObstacleKind};
+use counterfoil::plan::{PointDepth, PointDepthPlace};
 use counterfoil::quantity::{Given, Point};
 
 use super::{assert_close, calculate, kinds, plan_with_points, tg71};
@@ -39,6 +40,45 @@ fn verify_build_up() {
     assert_eq!(kinds(&result), [ObstacleKind::BuildUp]);
     // TPR(2, 10 x 10) 1.286.
     assert_close(result.trace.unwrap().dose_per_mu_cgy, 0.8 * 1.286, 1e-12);
+}
+
+/// A radiological depth in the build-up is one, however deep the point lies: 10 cm of which 2 cm count.
+#[test]
+fn verify_build_up_by_the_effective_depth() {
+    let mut machine = tg71("tg71-tpr");
+    machine.beams[0].d_max_cm = 3.0;
+    let mut plan = plan_with_points(|_| {});
+    plan.fraction_groups[0].beams[0].point_depths = vec![PointDepth {
+        place: PointDepthPlace::ReferencedBeam,
+        cumulative_weight: Given::Absent,
+        depth_cm: Given::stated(10.0),
+        equivalent_depth_cm: Given::stated(2.0),
+        ssd_cm: Given::Absent,
+        source_to_external_contour_cm: Given::Absent,
+        averaged: Given::Absent,
+    }];
+    let result = super::calculate_with(&plan, &machine);
+    assert_eq!(kinds(&result), [ObstacleKind::BuildUp]);
+}
+
+/// In-air ratios: the depth is along the ray. 10 cm off axis at the isocentre's distance, 10 cm perpendicular:
+/// 10 * sqrt(1 + 0.1^2) = 10.049876 along the ray; ratio 1.031 - 0.005 * 0.049876/2 = 1.030875;
+/// TPR 1 - 0.049876/2 * (1 - 0.941), 0.941 being the table's value at 12 cm for a side of 24 cm.
+#[test]
+fn verify_in_air_depth_is_along_the_ray() {
+    let mut plan = plan_with_points(|point| {
+        point.jaws_x_cm = Given::stated([-12.0, 12.0]);
+        point.jaws_y_cm = Given::stated([-12.0, 12.0]);
+    });
+    plan.fraction_groups[0].beams[0].specification_point =
+        Given::stated(Point::new(11.0, -2.0, 30.0));
+    let result = calculate(&plan);
+    assert_eq!(kinds(&result), []);
+    let trace = result.trace.unwrap();
+    let factor = |name| trace.factor(name).unwrap().value;
+    assert_close(factor(FactorName::OffAxisRatio), 1.030_875, 5e-7);
+    let tpr = 1.0 - 0.049_876 / 2.0 * (1.0 - 0.941);
+    assert_close(factor(FactorName::TissuePhantomRatio), tpr, 5e-7);
 }
 
 /// The last line of a table is inside, beyond it is not: TPR(25, 10 x 10) 0.547.
@@ -159,6 +199,28 @@ fn verify_on_the_axis_is_one_by_definition() {
         trace.factor(FactorName::OffAxisRatio).unwrap().value,
         1.011,
         1e-12,
+    );
+}
+
+/// Fixed SSD: the surface is set up, so the depth's uncertainty moves the point. SSD 100, 10 x 10 there: the dose goes
+/// with PDD alone, by the table's rows 110.9, 100, 89.8 at 8, 10, 12 cm: ln(100.545/99.49)/0.2 per cm times 0.3 cm.
+#[test]
+fn verify_depth_spread_in_the_ssd_form() {
+    let mut plan = plan_with_points(|point| point.ssd_cm = Given::stated(100.0));
+    plan.fraction_groups[0].beams[0].specification_point =
+        Given::stated(Point::new(1.0, 8.0, 30.0));
+    let spread = super::calculate_with(&plan, &tg71("tg71-pdd"))
+        .spread
+        .unwrap();
+    let depth = spread
+        .terms
+        .iter()
+        .find(|term| term.name == "depth")
+        .unwrap();
+    assert_close(
+        depth.percent,
+        100.0 * (100.545_f64 / 99.49).ln() / 0.2 * 0.3,
+        1e-6,
     );
 }
 

@@ -66,6 +66,20 @@ fn verify_fixed_ssd_plan() {
     assert_close(by_tpr.dose_per_mu_cgy, trace.dose_per_mu_cgy, 1e-12);
 }
 
+/// A setup technique of FIXED_SSD calls for the SSD form of a depth-dose table also where the isocentre lies
+/// in the patient; ISOCENTRIC does not. The dose is one.
+#[test]
+fn verify_form_follows_the_setup() {
+    let machine = tg71("tg71-pdd");
+    let mut plan = plain_plan();
+    let isocentric = calculate_with(&plan, &machine).trace.unwrap();
+    assert!(isocentric.factor(FactorName::TissuePhantomRatio).is_some());
+    plan.patient_setups[0].technique = Given::stated("FIXED_SSD".to_owned());
+    let fixed = calculate_with(&plan, &machine).trace.unwrap();
+    assert!(fixed.factor(FactorName::PercentDepthDose).is_some());
+    assert_close(fixed.dose_per_mu_cgy, isocentric.dose_per_mu_cgy, 1e-12);
+}
+
 fn technique(change: impl FnOnce(&mut Plan)) -> Technique {
     calculate(&plan_with(change)).technique
 }
@@ -372,6 +386,10 @@ fn verify_order_of_points() {
 
     let target = calculate(&unpointed(|plan| {
         plan.dose_references = vec![
+            DoseReference {
+                number: Given::Absent,
+                ..reference(0, "TARGET", Some(ELSEWHERE))
+            },
             reference(3, "TARGET", Some(ELSEWHERE)),
             reference(1, "ORGAN_AT_RISK", Some(ELSEWHERE)),
             reference(2, "TARGET", Some(ISOCENTRE)),
@@ -722,6 +740,29 @@ fn verify_couch_by_gantry_angle() {
         0.8,
         1e-12,
     );
+}
+
+/// Whether an effective depth may hold the couch already is told for the depth that is used, not for another.
+#[test]
+fn verify_couch_that_may_count_twice() {
+    let mut machine = tg71("tg71-tpr");
+    machine.beams[0].couch = vec![CouchArc {
+        from_deg: 350.0,
+        to_deg: 10.0,
+        transmission: 0.975,
+    }];
+    let plan = with_sets(vec![set(
+        PointDepthPlace::ReferencedBeam,
+        [Some(10.0), Some(10.0), None],
+    )]);
+    let site = Site::default();
+    let remark = |row: Option<&DepthRow>| {
+        let result = calculate_beam(&request(&plan, &machine, &site, row));
+        assert_close(verified_cgy_per_mu(&result), 0.8 * 0.975, 1e-12);
+        result.remarks.concat()
+    };
+    assert!(remark(None).contains("counts twice"));
+    assert!(!remark(Some(&row(10.0, None, None))).contains("counts twice"));
 }
 
 /// What the plan alone gives is there without a model.

@@ -101,3 +101,36 @@ proptest! {
         }
     }
 }
+
+#[test]
+fn validate_monotone_cubic_is_that_of_scipy() {
+    // Values by SciPy's PchipInterpolator: tests/external/check_interpolation.py writes and confirms the file.
+    let path = concat!(
+        env!("CARGO_MANIFEST_DIR"),
+        "/tests/data/interpolation/pchip.csv"
+    );
+    let mut reader = csv::ReaderBuilder::new()
+        .comment(Some(b'#'))
+        .from_path(path)
+        .unwrap();
+    let rows: Vec<(String, String, f64, f64)> = reader.deserialize().map(Result::unwrap).collect();
+    let mut cases: Vec<&str> = rows.iter().map(|row| row.0.as_str()).collect();
+    cases.dedup();
+    let (mut count, mut worst) = (0, 0.0_f64);
+    for case in cases {
+        let of_kind = |kind: &str| -> (Vec<f64>, Vec<f64>) {
+            let wanted = rows.iter().filter(|row| row.0 == case && row.1 == kind);
+            wanted.map(|row| (row.2, row.3)).unzip()
+        };
+        let (knots_x, knots_y) = of_kind("knot");
+        let table = grid(&knots_x, &knots_y, DepthInterpolation::MonotoneCubic);
+        let (xs, ys) = of_kind("value");
+        for (x, y) in xs.into_iter().zip(ys) {
+            let found = table.at(x, 0.0).unwrap().value;
+            worst = worst.max((found - y).abs());
+            count += 1;
+        }
+    }
+    println!("{count} values, largest difference {worst:.1e}");
+    assert!(count > 250 && worst < 1e-12, "{worst}");
+}

@@ -199,7 +199,7 @@ fn verify_wrong_keys_are_named_with_file_and_line() {
         (
             "sad_cm = 100.0",
             "sad_cm = 1000.0",
-            &["line 6", "source-axis distance"],
+            &["line 6", "1000 cm is outside", "in mm?"],
         ),
         (
             "dose_per_mu_cgy = 0.8",
@@ -231,7 +231,7 @@ fn verify_wrong_keys_are_named_with_file_and_line() {
         (
             "serves = [\"TG71-TPR\"]",
             "serves = [\"A\", \" A \"]",
-            &["serves", "`A` is given twice"],
+            &["line 5", "`A` is given twice"],
         ),
         (
             "serves = [\"TG71-TPR\"]",

@@ -1,9 +1,11 @@
 //! Beam models: what the loader accepts and refuses, the TG-71 data set, the
 //! shipped models, the published kernel, interpolation.
 
+mod damaged;
 mod interpolation;
 mod kernel;
 mod loader;
+mod page;
 mod planted;
 mod shipped;
 mod tg71;

@@ -3,7 +3,7 @@
 use counterfoil::beam_model::{
     TableKind, derivable_grid, derive_table, load_machine, tpr20_10_from_pdd20_10,
 };
-use counterfoil::quantity::{PointSquare, SurfaceSquare};
+use counterfoil::quantity::{CollimatorSquare, PointSquare, SurfaceSquare};
 
 use super::{copy_of, edit, shipped_machines, tg71_beam};
 
@@ -19,6 +19,34 @@ fn verify_one_conversion_by_hand() {
     let beam = tg71_beam("tg71-pdd");
     let tpr = beam.tpr(15.0, PointSquare::new(11.5)).unwrap();
     assert!((tpr.value - 0.825_482).abs() < 1e-6, "{}", tpr.value);
+}
+
+#[test]
+fn verify_look_ups_of_a_hand_calculation() {
+    // AAPM TG-71 tables, a 15 cm square at SSD 100, 8 cm deep: Sc between 14 and 16: 1.016; at d0 the side is 16.5,
+    // Sp between 16 and 20: 1.051 + 0.025 * 0.5/4 = 1.054125; PDD as printed, 110.3.
+    let beam = tg71_beam("tg71-pdd");
+    let near = |found: f64, expected: f64| assert!((found - expected).abs() < 1e-12, "{found}");
+    near(beam.sc(CollimatorSquare::new(15.0)).unwrap().value, 1.016);
+    let at_d0 = PointSquare::new(16.2).at_reference_depth(100.0, 10.0, 108.0);
+    near(beam.sp_at_d0(at_d0).unwrap().value, 1.054_125);
+    near(
+        beam.pdd_percent(8.0, SurfaceSquare::new(15.0), 100.0)
+            .unwrap()
+            .value,
+        110.3,
+    );
+    // Off axis 5 cm at 9 cm depth, between 4 and 6 cm: at 8 cm (1.030 + 1.036)/2 = 1.033, at 10 cm (1.028 + 1.030)/2 = 1.029, midway 1.031.
+    near(beam.off_axis_ratio(5.0, 9.0).unwrap().value, 1.031);
+    assert!(
+        beam.pdd_percent(1.4, SurfaceSquare::new(15.0), 100.0)
+            .is_err()
+    );
+    assert!(
+        beam.pdd_percent(25.1, SurfaceSquare::new(15.0), 100.0)
+            .is_err()
+    );
+    assert!(beam.sc(CollimatorSquare::new(40.1)).is_err());
 }
 
 #[test]

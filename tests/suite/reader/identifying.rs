@@ -78,13 +78,8 @@ fn verify_a_plan_without_beams_says_so() {
     let mut spec = PlanSpec::default();
     spec.beams.clear();
     spec.groups.clear();
-    let plan = read_plan(&spec.bytes()).expect("readable");
-    assert!(plan.beams.is_empty());
-    assert!(
-        plan.notes
-            .iter()
-            .any(|note| note.message.contains("no beams"))
-    );
+    assert_eq!(identify(&spec.bytes()).kind, FileKind::Plan);
+    assert_eq!(read_plan(&spec.bytes()), Err(ReadError::NoBeams));
 }
 
 #[test]

@@ -2,6 +2,7 @@
 
 mod attacks;
 mod conformance;
+mod framing;
 mod identifying;
 mod inheritance;
 mod mutation;

@@ -75,7 +75,7 @@ pub(super) fn everything() -> PlanSpec {
         number: 1,
         id: "C1".to_owned(),
         material: "BRASS".to_owned(),
-        transmission: None,
+        transmission: Some([0.5, 0.6, 0.7, 0.8]),
         thickness_cm: Some([1.0, 1.5, 2.0, 2.5]),
     }];
     let mut reference = ReferenceSpec::new(7, 123.456_789, 0.987_654);

@@ -109,7 +109,7 @@ fn verify_every_attribute_comes_back() {
     assert_eq!(beam.total_block_tray_factor, stated(0.97));
     assert_eq!(beam.boluses[0].roi_number, stated(12));
     assert_eq!(beam.accessories[0].id, stated("GRATICULE1".to_owned()));
-    assert!(!beam.compensators[0].has_transmission);
+    assert!(beam.compensators[0].has_transmission);
     assert!(beam.compensators[0].has_thickness);
 
     let electrons = &plan.beams[1];

@@ -118,3 +118,25 @@ fn verify_states_of_a_folder() {
         foreign(&path.join("thesis.odt").display().to_string())
     );
 }
+
+#[test]
+fn verify_a_failed_finish_leaves_no_temporary_file_and_no_mark() {
+    let folder = Folder::new();
+    let path = folder.path();
+    fs::create_dir_all(path.join("plans.csv").join("in the way")).unwrap();
+    let writer = ReportWriter::create(&path, &sample::run(2)).unwrap();
+    let error = writer.finish(&sample::summary()).unwrap_err().to_string();
+    assert!(error.contains("plans.csv"), "{error}");
+    let left = names(&path);
+    assert!(!left.contains(&"audit.json".to_owned()), "{left:?}");
+    assert!(left.iter().all(|name| !name.starts_with('.')), "{left:?}");
+}
+
+#[test]
+fn verify_a_folder_that_cannot_be_made_is_named() {
+    let folder = Folder::new();
+    fs::write(folder.path(), "a file in the way").unwrap();
+    let error = ReportWriter::create(&folder.path(), &sample::run(2)).unwrap_err();
+    assert!(error.to_string().contains("report"), "{error}");
+    assert_eq!(fs::read(folder.path()).unwrap(), b"a file in the way");
+}

@@ -6,3 +6,4 @@ mod page;
 mod record;
 mod sample;
 mod tables;
+mod texts;

@@ -174,6 +174,12 @@ proptest! {
         prop_assert!(!out.contains(char::is_control));
     }
 
+}
+
+proptest! {
+    // Each case writes a whole report.
+    #![proptest_config(ProptestConfig::with_cases(24))]
+
     #[test]
     fn property_tables_parse_back(name in "[\"',;\r\na= ]{0,10}") {
         let folder = Folder::new();

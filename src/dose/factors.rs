@@ -3,11 +3,15 @@
 //!
 //! Isocentric form, with S_ref the source distance of the reference point:
 //!
-//!     D/MU = D'0 Sc(c) Sp(s_d) TPR(d, s_d) OAR(d, r) WF TF CF BF (S_ref / SPD)^2
+//! ```text
+//! D/MU = D'0 Sc(c) Sp(s_d) TPR(d, s_d) OAR(d, r) WF TF CF BF (S_ref / SPD)^2
+//! ```
 //!
 //! SSD form, the same physics with a depth dose:
 //!
-//!     D/MU = D'0 Sc(c) Sp(s_d0) PDD(d, s, SSD)/100 OAR WF TF CF BF (S_ref / (SSD + d0))^2
+//! ```text
+//! D/MU = D'0 Sc(c) Sp(s_d0) PDD(d, s, SSD)/100 OAR WF TF CF BF (S_ref / (SSD + d0))^2
+//! ```
 //!
 //! A radiological depth enters the TPR only; the SSD form multiplies by
 //! TPR(d_eff, s_d)/TPR(d, s_d). With off-axis ratios measured in air the depth of

@@ -127,8 +127,12 @@ impl Quantity {
             value != 0.0 && scaled >= range.least && scaled <= range.greatest
         };
         match (range.unit, self) {
-            ("cm", _) if would_fit(10.0) => Some("ten times as much would be: was it written in cm where mm are wanted?"),
-            ("cm", _) if would_fit(0.1) => Some("a tenth would be: was it written in mm where cm are wanted?"),
+            ("cm", _) if would_fit(10.0) => {
+                Some("ten times as much would be: was it written in cm where mm are wanted?")
+            }
+            ("cm", _) if would_fit(0.1) => {
+                Some("a tenth would be: was it written in mm where cm are wanted?")
+            }
             ("Gy", _) if would_fit(0.01) => Some("was it written in cGy where DICOM has Gy?"),
             (_, Self::PhotonEnergy | Self::ElectronEnergy) if would_fit(0.001) => {
                 Some("was it written in kV or keV where DICOM has MV or MeV?")

@@ -20,5 +20,7 @@ mod house;
 /// The reader against plans that the builder writes, and against damaged files.
 mod reader;
 mod report;
+/// The plans in `sample-plans/`.
+mod sample_plans;
 /// The site file.
 mod settings;

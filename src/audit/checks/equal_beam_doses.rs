@@ -14,14 +14,14 @@ const DIFFERENT_RELATIVE: f64 = 0.05;
 check! {
     /// What it looks at: the beam doses of a fraction group whose beams have clearly different metersets (over 5 %).
     ///
-    /// Why it matters: some systems write the prescribed dose divided by the number of beams, or a fixed placeholder, instead of what each beam adds at its point. Every deviation then says nothing about the beam.
+    /// Why it matters: some systems write the prescribed dose divided by the number of beams, or a fixed placeholder, instead of what each beam adds at its point. Every deviation then says nothing about the beam. Beams that were weighted equally at the point on purpose look the same, so this is a note.
     ///
     /// Silent when: the doses differ, the metersets are alike, or there is only one treatment beam.
     ///
     /// What to do: see in the planning system what each beam adds at the point, and set the export to write that.
     ///
     /// Source: DICOM PS3.3 C.8.8.13, Beam Dose (300A,0084); met in real exports (common practice).
-    "equal-beam-doses", Tolerance, look,
+    "equal-beam-doses", Note, look,
     fires on || example::with_two_beams([(100.0, 1.0), (150.0, 1.0)]),
     silent on || example::with_two_beams([(100.0, 1.0), (100.0, 1.0)])
 }

@@ -643,6 +643,30 @@ fn verify_averages_are_told() {
     assert_eq!(result.remarks.len(), 1);
 }
 
+/// While the gantry turns the point has no one place in the beam: nothing is told that holds at one angle only,
+/// what the plan says of the point's depth is, and the technique alone is the obstacle.
+#[test]
+fn verify_arc_has_no_one_geometry() {
+    let mut plan = with_sets(vec![set(
+        PointDepthPlace::ReferencedBeam,
+        [Some(11.0), Some(9.0), None],
+    )]);
+    plan.beams[0].control_points[1].gantry_deg = Given::stated(180.0);
+    let result = calculate(&plan);
+    assert_eq!(result.technique, Technique::Arc);
+    assert_eq!(kinds(&result), [ObstacleKind::Technique]);
+    assert_eq!(
+        (result.gantry_deg, result.gantry_end_deg),
+        (Some(0.0), Some(180.0))
+    );
+    assert_eq!(result.point.unwrap().spd_cm, None);
+    assert_eq!(result.view.point_cm, None);
+    let bases: Vec<DepthBasis> = result.depths.iter().map(|depth| depth.basis).collect();
+    assert_eq!(bases, [DepthBasis::Plan]);
+    assert_close(result.depths[0].effective_cm, 9.0, 1e-12);
+    assert_eq!(result.trace, None);
+}
+
 /// An equivalent depth alone: no geometric depth, the TPR form.
 #[test]
 fn verify_equivalent_depth_alone() {

@@ -104,7 +104,7 @@ proptest! {
 
 #[test]
 fn validate_monotone_cubic_is_that_of_scipy() {
-    // Values by SciPy's PchipInterpolator: tests/external/check_interpolation.py writes and confirms the file.
+    // Values by SciPy's PchipInterpolator: tests/external/check_pchip_values.py writes and confirms the file.
     let path = concat!(
         env!("CARGO_MANIFEST_DIR"),
         "/tests/data/interpolation/pchip.csv"

@@ -1,0 +1,22 @@
+//! The plans in `sample-plans/`: what they are, that the files there are
+//! exactly these, and what the audit says of each.
+
+mod clean;
+mod course;
+mod faulty;
+mod files;
+mod geometry_shown;
+mod judged;
+mod not_yet;
+mod sample;
+
+use self::sample::Sample;
+
+/// Every sample plan.
+fn all() -> Vec<Sample> {
+    let mut samples = clean::samples();
+    samples.extend(geometry_shown::samples());
+    samples.extend(faulty::samples());
+    samples.extend(not_yet::samples());
+    samples
+}

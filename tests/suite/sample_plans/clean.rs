@@ -55,8 +55,8 @@ fn fixed_ssd() -> Sample {
         .fixed_ssd()
         .point(point_cm, PointStated::AtBeam)
         .fractions(10)
-        .treat(field(1, "Anterior", 0.0, -12.0), 1.5, -0.7)
-        .treat(field(2, "Posterior", 180.0, 8.0), 1.5, 0.9)
+        .treat(field(1, "Anterior", 0.0, -12.0), 1.55, -0.7)
+        .treat(field(2, "Posterior", 180.0, 8.0), 1.45, 0.9)
         .sound(
             "fixed-ssd.dcm",
             "fixed SSD of 100 cm on a machine with PDD tables",
@@ -106,8 +106,8 @@ fn two_fraction_groups() -> Sample {
     };
     Course::new(5, "Elder", "PHASES", "Two phases")
         .fractions(20)
-        .treat(field(1, "Anterior", 0.0, 90.1), 1.0, 0.5)
-        .treat(field(2, "Posterior", 180.0, 88.8), 1.0, -0.6)
+        .treat(field(1, "Anterior", 0.0, 90.1), 1.05, 0.5)
+        .treat(field(2, "Posterior", 180.0, 88.8), 0.95, -0.6)
         .fractions(5)
         .again(1, 0.7, 0.5)
         .treat(field(3, "Left", 90.0, 83.0), 0.65, 1.0)
@@ -253,8 +253,8 @@ fn tray() -> Sample {
     };
     Course::new(11, "Larch", "TRAY", "Opposed fields with a tray")
         .fractions(12)
-        .treat(field(1, "Anterior", 0.0, 91.2), 1.5, 1.3)
-        .treat(field(2, "Posterior", 180.0, 89.9), 1.5, -0.2)
+        .treat(field(1, "Anterior", 0.0, 91.2), 1.6, 1.3)
+        .treat(field(2, "Posterior", 180.0, 89.9), 1.4, -0.2)
         .sound("tray.dcm", "an empty block tray in each beam")
         .with_encoding(Encoding::ImplicitLittle)
 }

@@ -30,8 +30,8 @@ fn asymmetric_jaws() -> Sample {
     Course::new(13, "Nutmeg", "HALF", "Half-blocked opposed fields")
         .point(beside_isocentre([2.9, 3.4, 1.0]), PointStated::AtBeam)
         .fractions(25)
-        .treat(field(1, "Medial", 50.0, [0.0, 9.0], 91.4), 1.0, 0.8)
-        .treat(field(2, "Lateral", 230.0, [-9.0, 0.0], 91.8), 1.0, -0.6)
+        .treat(field(1, "Medial", 50.0, [0.0, 9.0], 91.4), 1.05, 0.8)
+        .treat(field(2, "Lateral", 230.0, [-9.0, 0.0], 91.8), 0.95, -0.6)
         .sound(
             "asymmetric-jaws.dcm",
             "half-blocked fields, one jaw on the axis, the point 4.5 cm off it",
@@ -147,8 +147,8 @@ fn decubitus() -> Sample {
         .position("HFDL")
         .point(beside_isocentre([1.0, -2.0, 2.0]), PointStated::AtBeam)
         .fractions(10)
-        .treat(field(1, "Right", 0.0, 88.7), 1.5, 1.1)
-        .treat(field(2, "Anterior", 90.0, 90.2), 1.5, -0.7)
+        .treat(field(1, "Right", 0.0, 88.7), 1.6, 1.1)
+        .treat(field(2, "Anterior", 90.0, 90.2), 1.4, -0.7)
         .sound(
             "decubitus.dcm",
             "head first, lying on the left side; isocentric on a machine with PDD tables",

@@ -169,3 +169,28 @@ fn verify_main_is_short() {
         .unwrap();
     assert!(main.text.lines().count() < 20);
 }
+
+#[test]
+fn verify_the_readme_lists_every_plan_check_as_it_is() {
+    let readme = include_str!("../../README.md");
+    let mut rows: Vec<String> = counterfoil::audit::checks::CHECKS
+        .iter()
+        .map(|check| {
+            let looks = check
+                .text
+                .lines()
+                .find_map(|line| line.trim().strip_prefix("What it looks at: "))
+                .unwrap()
+                .trim_end_matches('.');
+            format!("| `{}` | {} | {looks} |", check.name, check.severity.term())
+        })
+        .collect();
+    let mut found: Vec<&str> = readme
+        .lines()
+        .skip_while(|line| *line != "## Plan checks")
+        .filter(|line| line.starts_with("| `"))
+        .collect();
+    rows.sort_unstable();
+    found.sort_unstable();
+    assert_eq!(found, rows);
+}

@@ -9,6 +9,7 @@ mod clock;
 mod exit;
 mod field;
 mod model;
+mod pipe;
 mod progress;
 mod read;
 mod settings;
@@ -21,6 +22,7 @@ use clap::Parser;
 
 use args::{Arguments, Command};
 pub use exit::Exit;
+use pipe::Pipe;
 
 /// Runs the program on the process's own arguments and streams.
 #[must_use]
@@ -34,8 +36,9 @@ pub fn main() -> ExitCode {
             return ExitCode::from(u8::try_from(error.exit_code()).unwrap_or(2));
         }
     };
-    let mut out = io::stdout().lock();
-    ExitCode::from(run(arguments, &mut out, &mut io::stderr()).status())
+    let mut out = Pipe::new(io::stdout().lock());
+    let mut err = Pipe::new(io::stderr());
+    ExitCode::from(run(arguments, &mut out, &mut err).status())
 }
 
 /// Runs one command. Results go to `out`, everything else to `err`.
@@ -48,22 +51,8 @@ fn run(arguments: Arguments, out: &mut dyn Write, err: &mut dyn Write) -> Exit {
         Command::Checks => checks::run(out),
     };
     result.unwrap_or_else(|error| {
-        if is_broken_pipe(&error) {
-            // Whoever read our output has seen enough.
-            return Exit::Within;
-        }
         let causes: Vec<String> = error.chain().map(ToString::to_string).collect();
         let _ = writeln!(err, "counterfoil: {}", causes.join(": "));
         Exit::Failed
-    })
-}
-
-fn is_broken_pipe(error: &anyhow::Error) -> bool {
-    error.chain().any(|cause| {
-        let of_io = cause.downcast_ref::<io::Error>().map(io::Error::kind);
-        let of_json = cause
-            .downcast_ref::<serde_json::Error>()
-            .and_then(serde_json::Error::io_error_kind);
-        of_io.or(of_json) == Some(io::ErrorKind::BrokenPipe)
     })
 }

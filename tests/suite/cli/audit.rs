@@ -289,3 +289,26 @@ fn verify_settings_in_force_are_shown_with_their_source() {
     assert!(stdout(&output).contains("built-in defaults"));
     assert!(stdout(&output).contains("edge_margin_cm = 1.0"));
 }
+
+/// Once, a summary that nobody read turned status 1 into 0.
+#[cfg(unix)]
+#[test]
+fn verify_a_closed_pipe_changes_no_status() {
+    use std::process::{Command, Stdio};
+    let place = Place::new().with("a", &reference_plan("2.25.1").with_meterset(120.0));
+    // `true` reads nothing and is gone before the summary comes.
+    let mut reader = Command::new("true").stdin(Stdio::piped()).spawn().unwrap();
+    let pipe = reader.stdin.take().unwrap();
+    reader.wait().unwrap();
+    let status = program()
+        .arg("audit")
+        .arg(place.plans())
+        .arg("--models")
+        .arg(test_models())
+        .arg("--out")
+        .arg(place.report())
+        .stdout(Stdio::from(pipe))
+        .status()
+        .unwrap();
+    assert_eq!(status.code(), Some(BEYOND));
+}

@@ -3,6 +3,7 @@
 //! of files and the bytes do not depend on the number of threads.
 
 use std::collections::{BTreeSet, HashSet};
+use std::ops::Range;
 use std::path::Path;
 
 use rayon::prelude::*;
@@ -159,16 +160,17 @@ fn run_here(
     let mut used_rows: HashSet<(String, i32)> = HashSet::new();
 
     progress(Progress::AuditOf(files.len() as u64));
-    for start in (0..files.len()).step_by(WINDOW) {
-        let window = start..files.len().min(start + WINDOW);
-        let results: Vec<(FileEntry, Option<PlanEntry>)> = window
+    let work = |window: Range<usize>| -> Vec<(FileEntry, Option<PlanEntry>)> {
+        window
             .into_par_iter()
             .map(|index| {
                 let result = one_file(request, &files, index, &fates[index]);
                 progress(Progress::Audited);
                 result
             })
-            .collect();
+            .collect()
+    };
+    let mut write = |results: Vec<(FileEntry, Option<PlanEntry>)>| -> Result<(), ReportError> {
         for (file, plan) in results {
             tally.file(&file);
             writer.file(&file)?;
@@ -178,7 +180,17 @@ fn run_here(
                 writer.plan(&plan)?;
             }
         }
+        Ok(())
+    };
+    // One window is written while the next is worked on.
+    let mut done = Vec::new();
+    for start in (0..files.len()).step_by(WINDOW) {
+        let window = start..files.len().min(start + WINDOW);
+        let (written, next) = rayon::join(|| write(done), || work(window));
+        written?;
+        done = next;
     }
+    write(done)?;
     refuse_unused_rows(request.depth_rows, &used_rows)?;
 
     let models: Vec<ModelUse> = models

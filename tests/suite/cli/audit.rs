@@ -98,13 +98,13 @@ fn verify_one_bad_file_never_stops_the_others() {
     assert_eq!(place.column("plans.csv", "verdict"), ["within"]);
 }
 
-/// The same bytes for any number of threads and on every run: 70 plans, more than one window would need.
+/// The same bytes for any number of threads and on every run: 300 plans, more than one window holds.
 #[test]
 fn verify_jobs_change_no_byte() {
     let place = Place::new();
-    for number in 0..70_u32 {
-        let spec =
-            reference_plan(&format!("2.25.{number}")).with_meterset(95.0 + f64::from(number) / 7.0);
+    for number in 0..300_u32 {
+        let spec = reference_plan(&format!("2.25.{number}"))
+            .with_meterset(95.0 + f64::from(number) / 30.0);
         place.put(&format!("{number:03}.dcm"), &spec.bytes());
     }
     let written = |jobs: &str| {

@@ -5,6 +5,7 @@ mod audit;
 mod field;
 mod model;
 mod read;
+mod readme;
 
 use std::fs;
 use std::path::{Path, PathBuf};

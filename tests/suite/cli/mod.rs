@@ -84,7 +84,7 @@ impl Place {
 fn program() -> Command {
     let mut command = Command::new(assert_cmd::cargo::cargo_bin!("counterfoil"));
     command
-        .env("SOURCE_DATE_EPOCH", "1780000000")
+        .env("SOURCE_DATE_EPOCH", "1796083200")
         .env("XDG_CONFIG_HOME", "/nonexistent")
         .env_remove("COUNTERFOIL_MODELS")
         .env_remove("COUNTERFOIL_SITE");

@@ -85,11 +85,20 @@ pub(super) use check;
 
 /// The plan's reading notes of one kind, as observations.
 pub(super) fn from_notes(input: &CheckInput<'_>, kind: NoteKind) -> Vec<Observation> {
+    from_notes_where(input, kind, |_| true)
+}
+
+/// The plan's reading notes of one kind that meet a condition, as observations.
+pub(super) fn from_notes_where(
+    input: &CheckInput<'_>,
+    kind: NoteKind,
+    wanted: impl Fn(&ReadingNote) -> bool,
+) -> Vec<Observation> {
     input
         .plan
         .notes
         .iter()
-        .filter(|note| note.kind == kind)
+        .filter(|note| note.kind == kind && wanted(note))
         .map(|note| observation(input.plan, note))
         .collect()
 }

@@ -130,8 +130,8 @@ fn setup_fields() -> Sample {
             .with_field(20.0, 20.0)
             .with_gantry(gantry_deg)
             .map_first(|point| {
-                // No megavoltage, and nothing else that only a treatment beam has.
-                point.energy = None;
+                // Kilovolts, as some systems write them, and nothing that only a treatment beam has.
+                point.energy = Some(0.1);
                 point.dose_rate_mu_per_min = None;
                 point.ssd_cm = None;
             });

@@ -213,7 +213,7 @@ pub struct FileEntry {
     pub message: String,
 }
 
-/// A model as the run used it.
+/// A model that the run had on offer.
 #[derive(Clone, Debug, PartialEq, Serialize)]
 pub struct ModelUse {
     /// Folder name.
@@ -230,8 +230,6 @@ pub struct ModelUse {
     pub approval: String,
     /// Whether the approval holds on the day of the run.
     pub approved: bool,
-    /// Whether a plan of this run was calculated with it.
-    pub used: bool,
 }
 
 /// What was run, known before the first plan.
@@ -277,6 +275,8 @@ pub struct RunSummary {
     pub findings: Vec<Count>,
     /// Plan files that could not be read.
     pub unreadable_plans: u64,
+    /// Models (by name) that a plan of this run was calculated with.
+    pub models_used: Vec<String>,
     /// Models (by name) that were used and are invented.
     pub invented_models: Vec<String>,
     /// Models (by name) that were used and are not approved on the day of the run.

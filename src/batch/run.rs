@@ -86,7 +86,7 @@ pub struct Outcome {
     pub tally: Tally,
     /// The summary that the report carries.
     pub summary: RunSummary,
-    /// The models as used.
+    /// The models on offer.
     pub models: Vec<ModelUse>,
     /// The files written.
     pub written: Written,
@@ -193,13 +193,6 @@ fn run_here(
     write(done)?;
     refuse_unused_rows(request.depth_rows, &used_rows)?;
 
-    let models: Vec<ModelUse> = models
-        .into_iter()
-        .map(|mut model| {
-            model.used = tally.models_used().contains(&model.name);
-            model
-        })
-        .collect();
     let summary = tally.summary(
         &models,
         request.site.checks.off.clone(),
@@ -387,7 +380,6 @@ fn model_uses(models: &ModelSet, day: jiff::civil::Date) -> Vec<ModelUse> {
                     },
                 ),
                 approved: model.is_approved_on(day),
-                used: false,
             }
         })
         .collect()

@@ -70,12 +70,6 @@ impl Tally {
             && self.unapproved(models).is_empty()
     }
 
-    /// Models that a plan was calculated with.
-    #[must_use]
-    pub const fn models_used(&self) -> &BTreeSet<String> {
-        &self.models_used
-    }
-
     fn unapproved(&self, models: &[ModelUse]) -> Vec<String> {
         self.used(models, |model| !model.approved)
     }
@@ -124,6 +118,7 @@ impl Tally {
                 })
                 .collect(),
             unreadable_plans: self.unreadable_plans,
+            models_used: self.models_used.iter().cloned().collect(),
             invented_models: self.used(models, |model| model.origin == "invented"),
             unapproved_models: self.unapproved(models),
             checks_off,

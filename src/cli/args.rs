@@ -180,16 +180,16 @@ pub(super) struct FieldArguments {
     #[arg(long, value_name = "CM", value_parser = opening)]
     pub(super) square: Option<Opening>,
     /// Opening along x, cm: one number, or both positions as X1,X2
-    #[arg(long, value_name = "CM", value_parser = opening)]
+    #[arg(long, value_name = "CM", value_parser = opening, allow_hyphen_values = true)]
     pub(super) x: Option<Opening>,
     /// Opening along y, cm: one number, or both positions as Y1,Y2
-    #[arg(long, value_name = "CM", value_parser = opening)]
+    #[arg(long, value_name = "CM", value_parser = opening, allow_hyphen_values = true)]
     pub(super) y: Option<Opening>,
     /// Where the sides are meant
     #[arg(long, value_enum, default_value_t = SidesAt::Isocentre, value_name = "PLANE")]
     pub(super) sides_at: SidesAt,
     /// Where the ray to the point crosses the isocentre plane, cm
-    #[arg(long, value_name = "X,Y", value_parser = place)]
+    #[arg(long, value_name = "X,Y", value_parser = place, allow_hyphen_values = true)]
     pub(super) point: Option<Place>,
     /// Depth of the point below a flat surface, cm
     #[arg(long, value_name = "CM")]

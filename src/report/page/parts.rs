@@ -164,6 +164,7 @@ impl PlansInFullStart {
 #[template(path = "end.html", config = "src/report/askama.toml")]
 pub(super) struct End<'a> {
     run: &'a RunView,
+    models_used: &'a [String],
     checks_off: String,
     left_out: Vec<LeftOutGroup>,
 }
@@ -171,11 +172,12 @@ pub(super) struct End<'a> {
 /// The end of the page.
 pub(super) fn end<'a>(
     run: &'a RunView,
-    summary: &RunSummary,
+    summary: &'a RunSummary,
     left_out: Vec<LeftOutGroup>,
 ) -> End<'a> {
     End {
         run,
+        models_used: &summary.models_used,
         checks_off: if summary.checks_off.is_empty() {
             "none".to_owned()
         } else {

@@ -49,7 +49,6 @@ pub(super) struct ModelView {
     pub(super) approval: String,
     pub(super) approved: bool,
     pub(super) fingerprint: String,
-    pub(super) used: bool,
 }
 
 /// The view of a run.
@@ -166,7 +165,6 @@ fn model(model: &ModelUse) -> ModelView {
         approval: model.approval.clone(),
         approved: model.approved,
         fingerprint: model.fingerprint.clone(),
-        used: model.used,
     }
 }
 

@@ -312,3 +312,22 @@ fn verify_a_closed_pipe_changes_no_status() {
         .unwrap();
     assert_eq!(status.code(), Some(BEYOND));
 }
+
+/// What the record says of the models agrees with the page: only what a plan was calculated with is used.
+#[test]
+fn verify_the_record_names_the_models_that_were_used() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    assert_eq!(status(&place.audit(&[])), WITHIN);
+    let text = fs::read_to_string(place.report().join("audit.json")).unwrap();
+    let record: serde_json::Value = serde_json::from_str(&text).unwrap();
+    let offered = record["run"]["models"].as_array().unwrap();
+    assert!(offered.len() > 1);
+    assert!(offered.iter().all(|model| model.get("used").is_none()));
+    assert_eq!(
+        record["summary"]["models_used"],
+        serde_json::json!(["tg71-tpr"])
+    );
+    let page = fs::read_to_string(place.report().join("report.html")).unwrap();
+    assert_eq!(page.matches("<td>used</td>").count(), 1);
+    assert_eq!(page.matches("<td>not used</td>").count(), offered.len() - 1);
+}

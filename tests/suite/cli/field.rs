@@ -228,3 +228,28 @@ fn verify_what_cannot_be_meant_is_refused() {
         );
     }
 }
+
+/// `--x -5,5` is what a hand types; the value is no option although it begins with a hyphen.
+#[test]
+fn verify_positions_that_begin_with_a_minus_sign_are_values() {
+    let rest = "--depth 8 --tpr 0.787 --sc 0.970 --sp 0.990 --oar 1 --output 1 \
+        --reference-depth 1.5 --reference-distance 100 --d-max 1.5 --mu 100";
+    let apart = field(&format!("--x -5,5 --y -4,6 --point -1.5,2 {rest}"));
+    assert_eq!(
+        apart,
+        field(&format!("--x=-5,5 --y=-4,6 --point=-1.5,2 {rest}"))
+    );
+    // 100 MU x 1 cGy/MU x 0.970 x 0.990 x 0.787 = 75.576 cGy
+    near(number(&apart, "dose of 100 MU ="), 0.7558, 0.000_05);
+
+    // A forgotten value does not swallow the option after it.
+    for words in ["--x --y -4,6", "--square 10 --point --depth 8"] {
+        let output = program()
+            .arg("field")
+            .args(words.split_whitespace())
+            .args(rest.split_whitespace())
+            .output()
+            .unwrap();
+        assert_eq!(status(&output), 2, "{words}");
+    }
+}

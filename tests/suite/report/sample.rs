@@ -55,7 +55,6 @@ pub(crate) fn run(plans_in_full: usize) -> Run {
                 provenance: "made by a script for demonstration, 2030-01-01".to_owned(),
                 approval: "none".to_owned(),
                 approved: false,
-                used: true,
             },
             ModelUse {
                 name: "example-two".to_owned(),
@@ -66,7 +65,6 @@ pub(crate) fn run(plans_in_full: usize) -> Run {
                 provenance: "water tank, 2029-11-05, by the department's physics group".to_owned(),
                 approval: "by A. Physicist on 2029-12-01 until 2030-12-01".to_owned(),
                 approved: true,
-                used: false,
             },
         ],
     }
@@ -99,6 +97,7 @@ pub(crate) fn summary() -> RunSummary {
         ],
         findings: vec![count("action", 1), count("tolerance", 1), count("note", 1)],
         unreadable_plans: 1,
+        models_used: vec!["example-one".to_owned()],
         invented_models: vec!["example-one".to_owned()],
         unapproved_models: vec!["example-one".to_owned()],
         checks_off: vec!["fluence-mode-not-stated".to_owned()],

@@ -6,8 +6,8 @@ use std::sync::Arc;
 
 use dicom_dictionary_std::tags;
 
-use super::control_point::{BeamFrame, Before};
 use super::device::pair_count;
+use super::inherit::{BeamFrame, Before};
 use super::node::{Node, Reading, Wanted, length};
 use super::notes::Notes;
 use crate::plan::{

@@ -4,8 +4,9 @@
 use dicom_core::Tag;
 use dicom_dictionary_std::tags;
 
-use super::control_point::{BeamFrame, read_control_points};
+use super::control_point::read_control_points;
 use super::device::{Devices, read_devices};
+use super::inherit::BeamFrame;
 use super::modifier::{
     read_accessories, read_applicators, read_blocks, read_boluses, read_compensators, read_wedges,
 };

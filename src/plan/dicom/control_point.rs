@@ -8,20 +8,12 @@ use dicom_dictionary_std::tags;
 
 use super::aperture::{Told, read_positions};
 use super::fraction::read_depth_set;
-use super::node::{Node, Reading, Wanted, length, normalised_deg, plain, quantity};
+use super::inherit::{BeamFrame, Before};
+use super::node::{Node, Wanted, length, normalised_deg, plain, quantity};
 use super::notes::Notes;
 use super::wedge_position::read_wedge_positions;
-use crate::plan::{
-    ControlPoint, Effect, LimitingDevice, PointDepthPlace, RadiationType, ReferencedDose, Wedge,
-};
+use crate::plan::{ControlPoint, Effect, PointDepthPlace, RadiationType, ReferencedDose};
 use crate::quantity::{Given, Quantity};
-
-/// What control points need of their beam.
-pub(super) struct BeamFrame<'b> {
-    pub(super) radiation: Option<&'b RadiationType>,
-    pub(super) devices: &'b [LimitingDevice],
-    pub(super) wedges: &'b [Wedge],
-}
 
 /// All control points of a beam item.
 pub(super) fn read_control_points(
@@ -43,29 +35,6 @@ pub(super) fn read_control_points(
         points.push(point);
     }
     points
-}
-
-/// The control point before this one.
-pub(super) struct Before<'p> {
-    pub(super) point: &'p ControlPoint,
-    index: usize,
-}
-
-impl Before<'_> {
-    /// What stands here, or what stood before when nothing does.
-    pub(super) fn carry<T: Clone>(&self, here: Reading<T>, before: &Given<T>) -> Given<T> {
-        match here {
-            Reading::Value(value) => Given::stated(value),
-            Reading::Unusable => Given::Absent,
-            Reading::Nothing => match before {
-                Given::Stated { value } => Given::Inherited {
-                    value: value.clone(),
-                    from_control_point: self.index,
-                },
-                other => other.clone(),
-            },
-        }
-    }
 }
 
 const ANGLE: Wanted = quantity(Quantity::Angle, Effect::BlocksScope);

@@ -3,7 +3,7 @@
 
 use thiserror::Error;
 
-use super::kind::FileKind;
+use super::file_kind::FileKind;
 
 /// Why no plan came out of a file. Offsets are bytes from the start of the
 /// file, or of the inflated data set when the message says so.

@@ -9,9 +9,11 @@ mod complete;
 mod control_point;
 mod device;
 mod error;
+mod file_kind;
 mod fraction;
 mod framing;
 mod identity;
+mod inherit;
 mod kind;
 mod limits;
 mod modifier;
@@ -28,7 +30,8 @@ mod walk;
 mod wedge_position;
 
 pub use error::ReadError;
-pub use kind::{FileKind, Identified, identify};
+pub use file_kind::FileKind;
+pub use kind::{Identified, identify};
 
 use dicom_dictionary_std::tags;
 

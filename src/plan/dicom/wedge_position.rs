@@ -3,7 +3,7 @@
 
 use dicom_dictionary_std::tags;
 
-use super::control_point::Before;
+use super::inherit::Before;
 use super::node::{Node, Reading};
 use super::notes::Notes;
 use crate::plan::{Effect, NoteKind, Wedge, WedgePosition};

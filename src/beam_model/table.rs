@@ -105,6 +105,12 @@ pub struct Cell {
     pub column_name: &'static str,
     /// Neighbouring column coordinates; `None` for a table of one column.
     pub columns: Option<(f64, f64)>,
+    /// The table's own values there: for the lower and the upper row, each in
+    /// the lower and the upper column. On a row or a column both are equal.
+    pub corners: [[f64; 2]; 2],
+    /// Slopes of the monotone cubic down the rows at the same places, per unit of the row
+    /// coordinate; `None` where the rows are interpolated linearly.
+    pub slopes: Option<[[f64; 2]; 2]>,
 }
 
 /// A value and the cells it came from.
@@ -126,14 +132,23 @@ impl Lookup {
         }
     }
 
-    /// Where the value comes from, for people.
+    /// Where the value comes from, for people; a cell used twice is named once.
     #[must_use]
     pub fn source(&self) -> String {
-        let cells: Vec<String> = self.cells.iter().map(Cell::to_string).collect();
+        let mut cells: Vec<String> = Vec::new();
+        for cell in &self.cells {
+            let text = cell.to_string();
+            if !cells.contains(&text) {
+                cells.push(text);
+            }
+        }
         cells.join("; ")
     }
 }
 
+/// `6/tpr.csv, depth_cm 8 to 10, side_cm 10 to 12 (1.074 1.069 | 1 1)`: the values of the
+/// lower row in both columns, after the bar those of the upper row; with a monotone cubic
+/// its slopes in the same order.
 impl fmt::Display for Cell {
     fn fmt(&self, out: &mut fmt::Formatter<'_>) -> fmt::Result {
         let span = |(low, high): (f64, f64)| {
@@ -147,8 +162,30 @@ impl fmt::Display for Cell {
         if let Some(columns) = self.columns {
             write!(out, ", {} {}", self.column_name, span(columns))?;
         }
-        Ok(())
+        let across = self.columns.is_some_and(|(low, high)| low != high);
+        let row = |[low, high]: [f64; 2]| {
+            if across {
+                format!("{low} {high}")
+            } else {
+                format!("{low}")
+            }
+        };
+        let [lower, upper] = self.corners;
+        if self.rows.0 == self.rows.1 {
+            return write!(out, " ({})", row(lower));
+        }
+        write!(out, " ({} | {}", row(lower), row(upper))?;
+        if let Some([lower, upper]) = self.slopes {
+            let row = |slopes: [f64; 2]| row(slopes.map(to_slope_decimals));
+            write!(out, "; slopes {} | {}", row(lower), row(upper))?;
+        }
+        write!(out, ")")
     }
+}
+
+/// Six decimals: over a step of some centimetres the sixth does not move a TPR's fifth.
+fn to_slope_decimals(slope: f64) -> f64 {
+    (slope * 1e6).round() / 1e6
 }
 
 /// A position between two grid lines.
@@ -270,7 +307,14 @@ impl Grid {
         };
         let low = self.down_column(columns.low, rows);
         let high = self.down_column(columns.high, rows);
+        let four = |numbers: &[f64]| {
+            [rows.low, rows.high].map(|row| {
+                [columns.low, columns.high].map(|column| numbers[row * self.columns.len() + column])
+            })
+        };
         let cell = Cell {
+            corners: four(&self.values),
+            slopes: (!self.slopes.is_empty() && rows.low != rows.high).then(|| four(&self.slopes)),
             table: Arc::clone(&self.name),
             row_name: self.row_name,
             rows: (self.rows[rows.low], self.rows[rows.high]),

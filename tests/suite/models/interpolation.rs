@@ -42,6 +42,48 @@ fn verify_bilinear_by_hand() {
     }
 }
 
+/// What a look-up says about itself is enough to redo it with a pocket calculator.
+#[test]
+fn verify_a_lookup_shows_what_it_was_interpolated_between() {
+    let table = |interpolation| {
+        Grid::new(
+            "6/tpr.csv",
+            ("depth_cm", vec![0.0, 1.0, 3.0]),
+            ("side_cm", vec![5.0, 15.0]),
+            vec![0.0, 2.0, 1.0, 4.0, 2.0, 6.0],
+            interpolation,
+        )
+        .unwrap()
+    };
+    let linear = table(DepthInterpolation::Linear);
+    // A quarter down from 1 to 3, half across: left 1.25, right 4.5, middle 2.875.
+    let lookup = linear.at(1.5, 10.0).unwrap();
+    near(lookup.value, 2.875);
+    assert_eq!(
+        lookup.source(),
+        "6/tpr.csv, depth_cm 1 to 3, side_cm 5 to 15 (1 4 | 2 6)"
+    );
+    // On a row, on a column, on both.
+    for (depth_cm, side_cm, text) in [
+        (1.0, 10.0, "6/tpr.csv, depth_cm 1, side_cm 5 to 15 (1 4)"),
+        (1.5, 15.0, "6/tpr.csv, depth_cm 1 to 3, side_cm 15 (4 | 6)"),
+        (3.0, 15.0, "6/tpr.csv, depth_cm 3, side_cm 15 (6)"),
+    ] {
+        assert_eq!(linear.at(depth_cm, side_cm).unwrap().source(), text);
+    }
+    // The cubic needs its slopes. Left column as in the uneven table below: 9/13 = 0.692308 and 1/6 = 0.166667.
+    // Right column, secants 2 and 1, everything twice as steep: 18/13 = 1.384615 and 1/3 = 0.333333.
+    let cubic = table(DepthInterpolation::MonotoneCubic);
+    assert_eq!(
+        cubic.at(2.0, 10.0).unwrap().source(),
+        "6/tpr.csv, depth_cm 1 to 3, side_cm 5 to 15 (1 4 | 2 6; slopes 0.692308 1.384615 | 0.166667 0.333333)"
+    );
+    assert_eq!(
+        cubic.at(1.0, 5.0).unwrap().source(),
+        "6/tpr.csv, depth_cm 1, side_cm 5 (1)"
+    );
+}
+
 #[test]
 fn verify_monotone_cubic_by_hand() {
     // Rows 0, 1, 2, 3 with values 0, 1, 4, 9 (secants 1, 3, 5). Inner slopes, weighted harmonic mean with equal steps:

@@ -96,7 +96,7 @@ pub struct Outcome {
 #[derive(Debug, Error)]
 pub enum BatchError {
     /// No file is, or may be, a plan.
-    #[error("nothing to audit: none of the {files} files looked at is an RT Plan")]
+    #[error("nothing to audit: no RT Plan among the files looked at (files: {files})")]
     NothingToAudit {
         /// Files looked at.
         files: usize,

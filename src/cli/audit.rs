@@ -8,7 +8,7 @@ use anyhow::{Context, bail};
 
 use super::args::{AuditArguments, FailOn};
 use super::clock::started;
-use super::exit::Exit;
+use super::exit::{Completeness, Exit};
 use super::progress;
 use super::settings::{Effective, effective, load};
 use super::summary::write_summary;
@@ -60,11 +60,11 @@ pub(super) fn run(
     let outcome = outcome?;
     let exit = Exit::of_audit(&outcome.tally, &outcome.models, arguments.fail_on);
     if !arguments.quiet {
-        write_summary(out, &outcome, &arguments.out, exit)?;
+        write_summary(out, &outcome, &arguments.out, exit, arguments.fail_on)?;
     }
     // A status other than 0 is worth a word even to a script that throws stdout away.
     if arguments.quiet && exit != Exit::Within {
-        writeln!(err, "counterfoil: {}", exit.meaning())?;
+        writeln!(err, "counterfoil: {}", exit.of_level(arguments.fail_on))?;
     }
     Ok(exit)
 }
@@ -166,7 +166,7 @@ const fn fail_on_word(fail_on: FailOn) -> &'static str {
 fn exit_words(fail_on: FailOn) -> fn(&Tally, &[ModelUse]) -> String {
     fn words(tally: &Tally, models: &[ModelUse], fail_on: FailOn) -> String {
         let exit = Exit::of_audit(tally, models, fail_on);
-        format!("{}: {}", exit.status(), exit.meaning())
+        exit.sentence(fail_on, Completeness::of_audit(tally, models))
     }
     match fail_on {
         FailOn::Tolerance => |tally, models| words(tally, models, FailOn::Tolerance),

@@ -45,6 +45,43 @@ impl Exit {
         }
     }
 
+    /// What it means for an audit that was told to fail on this level.
+    pub(super) const fn of_level(self, fail_on: FailOn) -> &'static str {
+        match (self, fail_on) {
+            (Self::Within, FailOn::Tolerance) => {
+                "every treatment beam was verified and is within tolerance, and no finding is above a note"
+            }
+            (Self::Within, FailOn::Action) => {
+                "every treatment beam was verified, and no deviation or finding reaches beyond the action level (--fail-on action: beyond tolerance does not count)"
+            }
+            (Self::Within, FailOn::Never) => {
+                "every treatment beam was verified; whether deviations are within is not judged by this status (--fail-on never)"
+            }
+            (Self::Beyond, FailOn::Action) => {
+                "a deviation or a finding is beyond the action level (--fail-on action)"
+            }
+            (Self::Beyond, _) => {
+                "a deviation or a finding is beyond tolerance (--fail-on tolerance)"
+            }
+            (Self::Failed | Self::Incomplete, _) => self.meaning(),
+        }
+    }
+
+    /// The status in a sentence, with the other that holds beside it.
+    pub(super) fn sentence(self, fail_on: FailOn, complete: Completeness) -> String {
+        let beside = match (self, complete) {
+            (Self::Beyond, Completeness::Incomplete) => {
+                format!(" Status {} holds as well.", Self::Incomplete.status())
+            }
+            _ => String::new(),
+        };
+        format!(
+            "Exit status {}: {}.{beside}",
+            self.status(),
+            self.of_level(fail_on)
+        )
+    }
+
     /// The status of an audit from its counts.
     pub(super) fn of_audit(tally: &Tally, models: &[ModelUse], fail_on: FailOn) -> Self {
         let least = match fail_on {
@@ -66,6 +103,25 @@ impl Exit {
             Self::Beyond
         } else if tally.is_complete(models) {
             Self::Within
+        } else {
+            Self::Incomplete
+        }
+    }
+}
+
+/// Whether everything that had to be verified was.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Completeness {
+    /// It was.
+    Complete,
+    /// Something was not.
+    Incomplete,
+}
+
+impl Completeness {
+    pub(super) fn of_audit(tally: &Tally, models: &[ModelUse]) -> Self {
+        if tally.is_complete(models) {
+            Self::Complete
         } else {
             Self::Incomplete
         }

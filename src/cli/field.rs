@@ -6,7 +6,7 @@ use anyhow::{Context, bail};
 
 use super::args::{FieldArguments, SidesAt};
 use super::exit::Exit;
-use super::model::named_beam;
+use super::model::{named_beam, origin};
 use super::settings::{effective, load};
 use crate::beam_model::{BeamModel, MachineModel, ModelSet, ReferenceOutput, TableKind};
 use crate::dose::{
@@ -71,8 +71,10 @@ fn calculate(
         if let Some((machine, _)) = model {
             writeln!(
                 out,
-                "model {} ({:?} data, {})",
-                machine.name, machine.provenance.origin, machine.provenance.remark
+                "model {} ({} data): {}",
+                machine.name,
+                origin(machine),
+                machine.provenance.remark
             )?;
         }
     }

@@ -56,7 +56,8 @@ fn model_sets(arguments: &ModelCheckArguments) -> anyhow::Result<Vec<ModelSet>> 
     arguments.folders.iter().map(of_folder).collect()
 }
 
-fn origin(machine: &MachineModel) -> &'static str {
+/// Where a model's data come from, in a word.
+pub(super) fn origin(machine: &MachineModel) -> &'static str {
     use crate::beam_model::DataOrigin;
     match machine.provenance.origin {
         DataOrigin::Measured => "measured",

@@ -19,6 +19,9 @@ pub(super) fn run(arguments: ReadArguments, out: &mut dyn Write) -> anyhow::Resu
     };
     for path in &arguments.paths {
         let name = path.display().to_string();
+        if path.is_dir() {
+            bail!("{name} is a folder: name the plan files, such as {name}/*.dcm");
+        }
         let file = read_file(path).with_context(|| name.clone())?;
         let Contents::Whole(bytes) = &file.contents else {
             bail!("{name}: too large for an RT Plan");

@@ -3,9 +3,11 @@
 use std::io::{self, Write};
 use std::path::Path;
 
-use super::exit::Exit;
-use crate::audit::Count;
-use crate::batch::Outcome;
+use super::args::FailOn;
+use super::exit::{Completeness, Exit};
+use crate::audit::{Count, Verdict};
+use crate::batch::{Outcome, Tally};
+use crate::settings::Severity;
 
 /// Writes the summary of an audit.
 pub(super) fn write_summary(
@@ -13,55 +15,98 @@ pub(super) fn write_summary(
     outcome: &Outcome,
     folder: &Path,
     exit: Exit,
+    fail_on: FailOn,
 ) -> io::Result<()> {
     let summary = &outcome.summary;
     for (what, counts) in [
-        ("files", &summary.files),
         ("plans", &summary.plans),
         ("beams", &summary.beams),
         ("findings", &summary.findings),
+        ("files", &summary.files),
     ] {
         writeln!(out, "{what:<9} {}", counted(counts))?;
     }
-    if summary.unreadable_plans > 0 {
-        writeln!(
-            out,
-            "{} file(s) that are or may be plans could not be read: see files.csv",
-            summary.unreadable_plans
-        )?;
-    }
+    writeln!(out, "look at   {}", to_look_at(&outcome.tally))?;
     if !summary.invented_models.is_empty() {
         writeln!(
             out,
-            "demonstration data, not for clinical use: invented model(s) {}",
+            "stamp     DEMONSTRATION DATA, NOT FOR CLINICAL USE: numbers rest on invented models ({})",
             summary.invented_models.join(", ")
         )?;
     }
     if !summary.unapproved_models.is_empty() {
         writeln!(
             out,
-            "not approved, or approval out of date: model(s) {}",
+            "stamp     MODEL NOT APPROVED, or its approval is out of date: {}",
             summary.unapproved_models.join(", ")
         )?;
     }
-    writeln!(out, "report    {}", folder.join("report.html").display())?;
-    writeln!(out, "exit      {}: {}", exit.status(), exit.meaning())?;
-    if exit == Exit::Beyond && !summary.complete {
+    writeln!(
+        out,
+        "report    {} (opens with what needs a person, worst first)",
+        folder.join("report.html").display()
+    )?;
+    writeln!(
+        out,
+        "exit      {}: {}",
+        exit.status(),
+        exit.of_level(fail_on)
+    )?;
+    let complete = Completeness::of_audit(&outcome.tally, &outcome.models);
+    if exit == Exit::Beyond && complete == Completeness::Incomplete {
         writeln!(out, "          and 3: {}", Exit::Incomplete.meaning())?;
     }
     writeln!(
         out,
-        "This supports and does not replace a qualified physicist's review, measurement and local rules."
+        "This supports and does not replace a qualified physicist's review, measurement, licensed practice and local rules."
     )
 }
 
+/// What a person has to look at, in counts.
+fn to_look_at(tally: &Tally) -> String {
+    let plans: u64 = [
+        Verdict::BeyondAction,
+        Verdict::NotVerifiable,
+        Verdict::BeyondTolerance,
+    ]
+    .into_iter()
+    .map(|verdict| tally.plans_with(verdict))
+    .sum();
+    let findings = tally.findings_of(Severity::Action) + tally.findings_of(Severity::Tolerance);
+    let parts: Vec<String> = [
+        (
+            plans,
+            "plan beyond a level or not verifiable",
+            "plans beyond a level or not verifiable",
+        ),
+        (findings, "finding above a note", "findings above a note"),
+        (
+            tally.unreadable_plans(),
+            "file that is or may be a plan and could not be read (files.csv)",
+            "files that are or may be plans and could not be read (files.csv)",
+        ),
+    ]
+    .into_iter()
+    .filter(|(count, _, _)| *count > 0)
+    .map(|(count, one, many)| format!("{count} {}", if count == 1 { one } else { many }))
+    .collect();
+    if parts.is_empty() {
+        "nothing: no deviation beyond tolerance, nothing unverified, no finding above a note"
+            .to_owned()
+    } else {
+        parts.join(", ")
+    }
+}
+
+/// `40: 5 beyond-action, 35 within`.
 fn counted(counts: &[Count]) -> String {
     if counts.is_empty() {
         return "none".to_owned();
     }
+    let total: u64 = counts.iter().map(|count| count.count).sum();
     let words: Vec<String> = counts
         .iter()
         .map(|count| format!("{} {}", count.count, count.term))
         .collect();
-    words.join(", ")
+    format!("{total}: {}", words.join(", "))
 }

@@ -128,11 +128,7 @@ fn geometry_inputs(field: &FieldInput<'_>) -> Vec<Input> {
             symbol: "SPD",
             value: ray.spd_cm,
             unit: "cm",
-            source: format!(
-                "SAD {} cm, the point {} cm nearer the source than the isocentre",
-                number(ray.sad_cm),
-                number(ray.sad_cm - ray.spd_cm)
-            ),
+            source: distance_text(ray.sad_cm, ray.sad_cm - ray.spd_cm),
         },
         Input {
             name: "equivalent square at the point's plane",
@@ -178,6 +174,23 @@ fn geometry_inputs(field: &FieldInput<'_>) -> Vec<Input> {
         ),
     });
     inputs
+}
+
+fn distance_text(sad_cm: f64, nearer_cm: f64) -> String {
+    let place = if nearer_cm.abs() < tolerance::POSITION_CM {
+        "in the isocentre plane".to_owned()
+    } else if nearer_cm > 0.0 {
+        format!(
+            "{} cm nearer the source than the isocentre",
+            number(nearer_cm)
+        )
+    } else {
+        format!(
+            "{} cm farther from the source than the isocentre",
+            number(-nearer_cm)
+        )
+    };
+    format!("SAD {} cm, the point {place}", number(sad_cm))
 }
 
 fn reference_factor(field: &FieldInput<'_>) -> Result<Factor, FactorError> {

@@ -27,7 +27,7 @@ pub(super) fn reading_obstacles(request: &BeamRequest<'_>) -> Vec<Obstacle> {
         .map(|note| {
             obstacle(
                 ObstacleKind::Reading,
-                format!("{}: {}", note.place, note.message),
+                format!("{}; at {}", note.message, note.place),
             )
         })
         .collect();

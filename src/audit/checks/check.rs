@@ -110,7 +110,7 @@ fn observation(plan: &Plan, note: &ReadingNote) -> Observation {
     };
     Observation {
         beam_number,
-        message: format!("{}: {}", note.place, note.message),
+        message: format!("{}; at {}", note.message, note.place),
         measured: note.measured.clone(),
         limit: note.limit.clone(),
     }

@@ -198,7 +198,7 @@ fn band(beam: &BeamModel, ratios: &KernelRatios) -> Vec<ModelFinding> {
     };
     let percent = 100.0 * ratio;
     let message = format!(
-        "beside the published kernel for this beam quality the largest difference is {percent:+.1} % ({outside} of {} cells beyond {:.0} %)",
+        "beside the published kernel for this beam quality the largest difference is {percent:+.2} % ({outside} of {} cells beyond {:.0} %)",
         ratios.len(),
         100.0 * KERNEL_LIMIT
     );

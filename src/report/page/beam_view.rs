@@ -280,7 +280,7 @@ fn point_facts(point: &DosePoint) -> Vec<Fact> {
         format!("({}, {}, {}) cm", signed(x, 2), signed(y, 2), signed(z, 2))
     };
     let mut facts = vec![
-        fact("rule", point.basis.term().to_owned()),
+        fact("basis", point.basis.term().to_owned()),
         fact("from", point.source.clone()),
         fact(
             "in the patient",

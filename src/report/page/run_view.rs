@@ -56,7 +56,7 @@ pub(super) fn view(run: &Run) -> RunView {
     RunView {
         run_id: run.run_id.clone(),
         version: run.version.clone(),
-        started: run.started.clone(),
+        started: readable(&run.started),
         inputs: inputs(&run.inputs),
         options: run.options.clone(),
         site_source: run.site_source.file.as_ref().map_or_else(
@@ -68,6 +68,14 @@ pub(super) fn view(run: &Run) -> RunView {
         settings: settings(&run.site),
         models: run.models.iter().map(model).collect(),
     }
+}
+
+/// A time as people write it; what is no time stays as it is.
+fn readable(started: &str) -> String {
+    started.parse::<jiff::ZonedDateTime>().map_or_else(
+        |_| started.to_owned(),
+        |time| time.strftime("%Y-%m-%d %H:%M:%S, UTC%:z").to_string(),
+    )
 }
 
 /// The paths as typed: the first of them when a shell has spread a pattern.

@@ -59,7 +59,7 @@ pub(super) fn beam(lines: &mut Lines, beam: &Beam, index: usize, detail: Control
     control_point::control_points(lines, beam, detail);
 }
 
-const fn energy_unit(beam: &Beam) -> &'static str {
+pub(super) const fn energy_unit(beam: &Beam) -> &'static str {
     match beam.radiation.value() {
         Some(RadiationType::Photon) => "MV",
         Some(RadiationType::Electron) => "MeV",

@@ -2,7 +2,7 @@
 //! point stated it or an earlier one did.
 
 use super::ControlPointDetail;
-use super::beam::device_term;
+use super::beam::{device_term, energy_unit};
 use super::lines::{Lines, as_is, in_unit, sides, yes_no};
 use super::plan::{point, point_depth};
 use crate::plan::{Beam, ControlPoint, LeafAxis, LeafPositions};
@@ -25,8 +25,10 @@ pub(super) fn control_points(lines: &mut Lines, beam: &Beam, detail: ControlPoin
         one(lines, beam, control_point);
     }
     if total > shown {
-        let left = total - shown;
-        lines.plain(&format!("{left} further control point(s) not shown"));
+        lines.plain(&match total - shown {
+            1 => "1 further control point is not shown: --control-points".to_owned(),
+            left => format!("{left} further control points are not shown: --control-points"),
+        });
     }
 }
 
@@ -45,7 +47,7 @@ fn one(lines: &mut Lines, beam: &Beam, control_point: &ControlPoint) {
     lines.given("couch", &at.couch_deg, in_unit("deg"));
     lines.given("SSD", &at.ssd_cm, in_unit("cm"));
     lines.given("isocentre", &at.isocentre, point);
-    lines.given("nominal energy", &at.energy, in_unit(""));
+    lines.given("nominal energy", &at.energy, in_unit(energy_unit(beam)));
     lines.optional("surface entry point", &at.surface_entry, point);
     lines.optional(
         "source to external contour",

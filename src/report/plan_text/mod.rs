@@ -31,9 +31,9 @@ pub fn plan_text(plan: &Plan, control_points: ControlPointDetail) -> String {
     plan::setups(&mut lines, plan);
     plan::prescription(&mut lines, &plan.dose_references);
     for (index, group) in plan.fraction_groups.iter().enumerate() {
-        plan::fraction_group(&mut lines, group, index);
+        plan::fraction_group(&mut lines, plan, group, index);
     }
-    overview::beams(&mut lines, &plan.beams);
+    overview::beams(&mut lines, plan);
     for (index, beam) in plan.beams.iter().enumerate() {
         beam::beam(&mut lines, beam, index, control_points);
     }

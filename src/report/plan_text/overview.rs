@@ -1,27 +1,48 @@
 //! Every beam in one line, for a first look against the printout: what the
-//! first control point holds. Where each value stands is said further down.
+//! first control point holds, and the meterset and dose of each reference in a
+//! fraction group. Where each value stands is said further down.
 
 use super::lines::Lines;
-use crate::plan::Beam;
+use super::plan::meterset_unit;
+use crate::plan::{Beam, Plan, ReferencedBeam};
 use crate::quantity::Given;
 use crate::report::plain_text::{one_line, trimmed};
 
-const HEADER: [&str; 10] = [
-    "number", "name", "energy", "gantry", "coll.", "couch", "x cm", "y cm", "SSD cm", "points",
+const COLUMNS: usize = 12;
+/// Heads of the columns, and whether a column stands at the right, as numbers do.
+const HEADER: [(&str, Side); COLUMNS] = [
+    ("number", Side::Right),
+    ("name", Side::Left),
+    ("energy", Side::Left),
+    ("gantry deg", Side::Right),
+    ("coll. deg", Side::Right),
+    ("couch deg", Side::Right),
+    ("x cm", Side::Left),
+    ("y cm", Side::Left),
+    ("SSD cm", Side::Right),
+    ("meterset", Side::Right),
+    ("dose Gy", Side::Right),
+    ("points", Side::Right),
 ];
 /// A name in the overview has at most so many characters.
 const NAME_LENGTH: usize = 20;
 
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Side {
+    Left,
+    Right,
+}
+
 /// The overview of the beams.
-pub(super) fn beams(lines: &mut Lines, beams: &[Beam]) {
+pub(super) fn beams(lines: &mut Lines, plan: &Plan) {
     lines.heading("Beams, first control point (- absent)");
-    if beams.is_empty() {
+    if plan.beams.is_empty() {
         lines.plain("none");
         return;
     }
-    let mut rows = vec![HEADER.map(str::to_owned)];
-    rows.extend(beams.iter().map(row));
-    let mut widths = [0; HEADER.len()];
+    let mut rows = vec![HEADER.map(|(head, _)| head.to_owned())];
+    rows.extend(plan.beams.iter().map(|beam| row(plan, beam)));
+    let mut widths = [0; COLUMNS];
     for row in &rows {
         for (width, cell) in widths.iter_mut().zip(row) {
             *width = (*width).max(cell.chars().count());
@@ -31,13 +52,18 @@ pub(super) fn beams(lines: &mut Lines, beams: &[Beam]) {
         let cells: Vec<String> = row
             .iter()
             .zip(widths)
-            .map(|(cell, width)| format!("{cell:<width$}"))
+            .zip(HEADER)
+            .map(|((cell, width), (_, side))| match side {
+                Side::Left => format!("{cell:<width$}"),
+                Side::Right => format!("{cell:>width$}"),
+            })
             .collect();
         lines.plain(&cells.join("  "));
     }
+    lines.plain("meterset and dose are of one fraction; points are control points");
 }
 
-fn row(beam: &Beam) -> [String; HEADER.len()] {
+fn row(plan: &Plan, beam: &Beam) -> [String; COLUMNS] {
     let first = beam.control_points.first();
     let number = |value: Option<&Given<f64>>| {
         value
@@ -66,8 +92,39 @@ fn row(beam: &Beam) -> [String; HEADER.len()] {
         sides(first.map(|point| &point.jaws_x_cm)),
         sides(first.map(|point| &point.jaws_y_cm)),
         number(first.map(|point| &point.ssd_cm)),
+        of_references(plan, beam, |reference| {
+            let meterset = reference.meterset_mu.get()?;
+            let unit = one_line(&meterset_unit(plan, reference));
+            Some(format!("{} {unit}", trimmed(meterset, 6)))
+        }),
+        of_references(plan, beam, |reference| {
+            Some(trimmed(reference.beam_dose_gy.get()?, 6))
+        }),
         beam.control_points.len().to_string(),
     ]
+}
+
+/// What the fraction groups say of a beam, one after the other.
+fn of_references(
+    plan: &Plan,
+    beam: &Beam,
+    show: impl Fn(&ReferencedBeam) -> Option<String>,
+) -> String {
+    let Some(number) = beam.number.get() else {
+        return absent();
+    };
+    let shown: Vec<String> = plan
+        .fraction_groups
+        .iter()
+        .flat_map(|group| &group.beams)
+        .filter(|reference| reference.beam_number.get() == Some(number))
+        .map(|reference| show(reference).unwrap_or_else(absent))
+        .collect();
+    if shown.is_empty() {
+        absent()
+    } else {
+        shown.join(", ")
+    }
 }
 
 fn absent() -> String {

@@ -111,7 +111,7 @@ pub(super) fn prescription(lines: &mut Lines, references: &[DoseReference]) {
     }
 }
 
-pub(super) fn fraction_group(lines: &mut Lines, group: &FractionGroup, index: usize) {
+pub(super) fn fraction_group(lines: &mut Lines, plan: &Plan, group: &FractionGroup, index: usize) {
     lines.heading(&format!("Fraction group, item {}", index + 1));
     lines.given("fraction group number", &group.number, as_is);
     lines.given("fractions planned", &group.fractions_planned, as_is);
@@ -127,18 +127,31 @@ pub(super) fn fraction_group(lines: &mut Lines, group: &FractionGroup, index: us
         );
     }
     for beam in &group.beams {
-        referenced_beam(lines, beam);
+        referenced_beam(lines, beam, &meterset_unit(plan, beam));
     }
 }
 
-fn referenced_beam(lines: &mut Lines, beam: &ReferencedBeam) {
+/// The unit of a meterset: what the beam of that number names, MU where it names none.
+pub(super) fn meterset_unit(plan: &Plan, reference: &ReferencedBeam) -> String {
+    plan.beams
+        .iter()
+        .find(|beam| {
+            beam.number.get().is_some() && beam.number.get() == reference.beam_number.get()
+        })
+        .and_then(|beam| beam.dosimeter_unit.value().cloned())
+        .unwrap_or_else(|| "MU".to_owned())
+}
+
+fn referenced_beam(lines: &mut Lines, beam: &ReferencedBeam, unit: &str) {
     let number = beam
         .beam_number
         .value()
         .map_or_else(|| "of unknown number".to_owned(), ToString::to_string);
     lines.subheading(&format!("Beam {number} in this group"));
     lines.given("referenced beam number", &beam.beam_number, as_is);
-    lines.given("meterset", &beam.meterset_mu, in_unit("MU"));
+    lines.given("meterset", &beam.meterset_mu, |meterset| {
+        format!("{} {unit}", in_unit("")(meterset))
+    });
     lines.given(
         "beam dose in one fraction",
         &beam.beam_dose_gy,

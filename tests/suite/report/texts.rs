@@ -229,10 +229,16 @@ fn verify_plan_text_shows_values_and_where_they_stand() {
         "at BeamSequence[0].SourceAxisDistance (300A,00B4)",
         "expected 60 to 150 cm",
         "-  absent: plan name, ",
-        "7       RLAT  6       270     -      -      -10 to 10  -4 to 7.5  89.84   2",
     ] {
         assert!(text.contains(part), "{part}\n{text}");
     }
+    // The overview: number, name, energy, three angles, both openings, SSD, meterset, dose, control points.
+    let overview = "7 RLAT 6 270 - - -10 to 10 -4 to 7.5 89.84 116.0037 MU 1.02754 2";
+    assert!(
+        text.lines()
+            .any(|line| line.split_whitespace().eq(overview.split(' '))),
+        "{overview}\n{text}"
+    );
     assert_eq!(
         text.matches("pair   1").count(),
         1,
@@ -248,7 +254,7 @@ fn verify_plan_text_shows_values_and_where_they_stand() {
 fn verify_plan_text_first_control_point_says_what_it_leaves_out() {
     let text = plan_text(&plan(), ControlPointDetail::First);
     assert!(
-        text.contains("1 further control point(s) not shown"),
+        text.contains("1 further control point is not shown"),
         "{text}"
     );
     assert!(!text.contains("Control point 1 of 2"), "{text}");

@@ -13,7 +13,7 @@ use super::guard::guarded;
 use super::summary::Tally;
 use super::survey::{Seen, Surveyed, survey};
 use crate::audit::{
-    FileEntry, FileOutcome, ModelUse, PlanEntry, PlanInput, Run, RunSummary, audit_plan,
+    FileEntry, FileOutcome, ModelUse, PlanEntry, PlanInput, Rivals, Run, RunSummary, audit_plan,
 };
 use crate::beam_model::{DataOrigin, ModelSet};
 use crate::dose::DepthRow;
@@ -268,7 +268,7 @@ fn audit_file(
     path: &Path,
     name: &str,
     sha256: &str,
-    rivals: &[String],
+    rivals: &Rivals,
 ) -> Result<PlanEntry, String> {
     let file = read_file(path).map_err(|error| error.to_string())?;
     let Contents::Whole(bytes) = &file.contents else {

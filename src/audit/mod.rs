@@ -9,9 +9,11 @@ mod group;
 mod levels;
 mod plan_entry;
 mod prescription;
+mod rivals;
 
 pub use entry::{
     BeamEntry, Count, FileEntry, FileOutcome, Finding, Judgement, ModelUse, PlanEntry, Run,
     RunSummary, SharedPointSum, Verdict,
 };
 pub use plan_entry::{PlanInput, audit_plan};
+pub use rivals::Rivals;

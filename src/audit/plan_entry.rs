@@ -4,7 +4,7 @@
 use super::checks::{CheckInput, run_checks};
 use super::compare::beam_entry;
 use super::group::{judge_group, strictest_levels};
-use super::{BeamEntry, PlanEntry, SharedPointSum, Verdict};
+use super::{BeamEntry, PlanEntry, Rivals, SharedPointSum, Verdict};
 use crate::beam_model::{DataOrigin, ModelSet};
 use crate::dose::{BeamRequest, DepthRow, ModelAnswer, Obstacle, ObstacleKind, calculate_beam};
 use crate::plan::{Effect, NoteScope, Plan};
@@ -20,7 +20,7 @@ pub struct PlanInput<'a> {
     /// The plan.
     pub plan: &'a Plan,
     /// Other files with the same SOP Instance UID and different content.
-    pub rivals: &'a [String],
+    pub rivals: &'a Rivals,
     /// The models on offer.
     pub models: &'a ModelSet,
     /// The site's rules.
@@ -140,13 +140,13 @@ fn depth_row_for<'a>(input: PlanInput<'a>, beam_index: usize) -> Option<&'a Dept
         .find(|row| row.beam_number == number)
 }
 
-fn rival_obstacle(rivals: &[String]) -> Option<Obstacle> {
+fn rival_obstacle(rivals: &Rivals) -> Option<Obstacle> {
     let first = rivals.first()?;
     Some(Obstacle {
         kind: ObstacleKind::Reading,
         message: format!(
             "{} more file(s) carry the same SOP Instance UID (0008,0018) with different content, such as {first}: which one is the plan cannot be told; remove the wrong one",
-            rivals.len()
+            rivals.count()
         ),
     })
 }

@@ -1,14 +1,14 @@
 //! The user's depth table: one row a beam, from CSV.
 
 use std::collections::HashSet;
-use std::fs::File;
+use std::fs;
 use std::path::Path;
 
 use serde::Deserialize;
 use thiserror::Error;
 
 use crate::dose::DepthRow;
-use crate::quantity::Quantity;
+use crate::quantity::{Quantity, sha256_hex};
 
 /// Why a depth table was refused.
 #[derive(Debug, Error)]
@@ -44,22 +44,32 @@ struct RawRow {
     independent: String,
 }
 
+/// A depth table as read.
+#[derive(Clone, Debug, Default)]
+pub struct DepthTable {
+    /// Its rows.
+    pub rows: Vec<DepthRow>,
+    /// SHA-256 of the bytes that the rows were read from, hex.
+    pub sha256: String,
+}
+
 /// Reads a depth table: header `sop_instance_uid, beam_number, depth_cm,
 /// effective_depth_cm, ssd_cm, independent`, depths along the ray from the
 /// source to the dose point, `independent` yes or no.
 ///
 /// # Errors
 /// When a row cannot be read, is not credible, or names a beam twice.
-pub fn read_depth_table(path: &Path) -> Result<Vec<DepthRow>, DepthTableError> {
+pub fn read_depth_table(path: &Path) -> Result<DepthTable, DepthTableError> {
     let file = path.display().to_string();
-    let reader = File::open(path).map_err(|source| DepthTableError::Unreadable {
+    // Once: a pipe gives its bytes only once, and a file may change between two readings.
+    let bytes = fs::read(path).map_err(|source| DepthTableError::Unreadable {
         file: file.clone(),
         source,
     })?;
     let mut table = csv::ReaderBuilder::new()
         .trim(csv::Trim::All)
         .comment(Some(b'#'))
-        .from_reader(reader);
+        .from_reader(bytes.as_slice());
     let headers = table.headers().cloned();
     let mut rows = Vec::new();
     let mut seen = HashSet::new();
@@ -75,7 +85,10 @@ pub fn read_depth_table(path: &Path) -> Result<Vec<DepthRow>, DepthTableError> {
             refuse(line, error.to_string())
         })?;
         if !more {
-            return Ok(rows);
+            return Ok(DepthTable {
+                rows,
+                sha256: sha256_hex(&bytes),
+            });
         }
         let line = record.position().map_or(0, csv::Position::line);
         let header = headers

@@ -2,15 +2,17 @@
 //! once when they are the same bytes, and bar each other when they are not.
 
 use std::collections::HashMap;
+use std::collections::hash_map::Entry;
 
 use super::survey::{Seen, Surveyed};
+use crate::audit::Rivals;
 use crate::plan::FileKind;
 
 /// What is to be done with a file.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub(super) enum Fate {
     /// Audit it; the named files have the same UID and other content.
-    Audit { rivals: Vec<String> },
+    Audit { rivals: Rivals },
     /// The same plan and bytes as the file of this index.
     DuplicateOf(usize),
     /// Not a plan to audit.
@@ -40,22 +42,24 @@ pub(super) fn fates(files: &[Surveyed]) -> Vec<Fate> {
     let mut fates = vec![Fate::Leave; files.len()];
     for indices in by_identity.values() {
         let mut originals: Vec<usize> = Vec::new();
+        let mut by_content: HashMap<&str, usize> = HashMap::new();
         for &index in indices {
-            match originals
-                .iter()
-                .find(|&&original| sha256_of(original) == sha256_of(index))
-            {
-                Some(&original) => fates[index] = Fate::DuplicateOf(original),
-                None => originals.push(index),
+            match by_content.entry(sha256_of(index)) {
+                Entry::Occupied(original) => fates[index] = Fate::DuplicateOf(*original.get()),
+                Entry::Vacant(place) => {
+                    place.insert(index);
+                    originals.push(index);
+                }
             }
         }
         for &index in &originals {
-            let rivals = originals
+            let others = originals
                 .iter()
                 .filter(|&&other| other != index)
-                .map(|&other| files[other].path.display().to_string())
-                .collect();
-            fates[index] = Fate::Audit { rivals };
+                .map(|&other| files[other].path.display().to_string());
+            fates[index] = Fate::Audit {
+                rivals: Rivals::new(originals.len() - 1, others),
+            };
         }
     }
     fates
@@ -64,6 +68,7 @@ pub(super) fn fates(files: &[Surveyed]) -> Vec<Fate> {
 #[cfg(test)]
 mod tests {
     use super::{Fate, fates};
+    use crate::audit::Rivals;
     use crate::batch::survey::{Seen, Surveyed};
     use crate::plan::FileKind;
 
@@ -83,7 +88,7 @@ mod tests {
     #[test]
     fn verify_same_bytes_are_audited_once_and_other_bytes_bar_each_other() {
         let audit = |rivals: &[&str]| Fate::Audit {
-            rivals: rivals.iter().map(|&name| name.to_owned()).collect(),
+            rivals: Rivals::new(rivals.len(), rivals.iter().map(|&name| name.to_owned())),
         };
         let files = [
             plan("a", Some("1.2"), "x"),
@@ -103,6 +108,23 @@ mod tests {
                 Fate::DuplicateOf(3),
                 audit(&[]),
             ]
+        );
+    }
+
+    /// Anonymised plans may all bear one UID: 40,000 of them name a few of their rivals each, not all.
+    #[test]
+    fn verify_a_uid_on_every_file_does_not_cost_the_square() {
+        let files: Vec<Surveyed> = (0..40_000)
+            .map(|number| plan(&format!("{number}.dcm"), Some("1.2"), &number.to_string()))
+            .collect();
+        let all = fates(&files);
+        let Fate::Audit { rivals } = &all[0] else {
+            panic!("audited");
+        };
+        assert_eq!(rivals.count(), 39_999);
+        assert_eq!(
+            rivals.in_words(),
+            "1.dcm, 2.dcm, 3.dcm, 4.dcm, 5.dcm and 39994 more"
         );
     }
 }

@@ -3,6 +3,7 @@
 //! of the files and are streamed to disk. A panic in one file becomes that
 //! file's row. Nothing here prints.
 
+mod depth_rows;
 mod depths;
 mod fate;
 mod guard;
@@ -10,7 +11,7 @@ mod run;
 mod summary;
 mod survey;
 
-pub use depths::{DepthTableError, read_depth_table};
+pub use depths::{DepthTable, DepthTableError, read_depth_table};
 pub use guard::quiet_panics;
 pub use run::{BatchError, BatchRequest, Outcome, Progress, RunFacts, run};
 pub use summary::Tally;

@@ -2,19 +2,20 @@
 //! parallel and written in order, so that memory does not grow with the number
 //! of files and the bytes do not depend on the number of threads.
 
-use std::collections::{BTreeSet, HashSet};
+use std::collections::BTreeSet;
 use std::ops::Range;
 use std::path::Path;
 
 use rayon::prelude::*;
 use thiserror::Error;
 
+use super::depth_rows::{RowsByPlan, UnusedRows};
 use super::fate::{Fate, fates};
 use super::guard::guarded;
 use super::summary::Tally;
 use super::survey::{Seen, Surveyed, survey};
 use crate::audit::{
-    FileEntry, FileOutcome, ModelUse, PlanEntry, PlanInput, Run, RunSummary, audit_plan,
+    FileEntry, FileOutcome, ModelUse, PlanEntry, PlanInput, Rivals, Run, RunSummary, audit_plan,
 };
 use crate::beam_model::{DataOrigin, ModelSet};
 use crate::dose::DepthRow;
@@ -25,7 +26,10 @@ use crate::report::{ReportError, ReportWriter, Written};
 use crate::settings::{Site, SiteSource};
 
 /// Files in one window: enough to keep every thread busy, few enough to hold.
-const WINDOW: usize = 256;
+const WINDOW_FILES: usize = 256;
+
+/// Size of the plans in one window: what becomes of a plan may be several times as large.
+const WINDOW_BYTES: u64 = 16 * 1024 * 1024;
 
 /// A reader's worst case is bounded depth; this leaves room for it on every thread.
 const STACK_BYTES: usize = 8 * 1024 * 1024;
@@ -157,14 +161,15 @@ fn run_here(
     run.run_id = run_id(&run, &files);
     let mut writer = ReportWriter::create(request.report_folder, &run)?;
     let mut tally = Tally::default();
-    let mut used_rows: HashSet<(String, i32)> = HashSet::new();
+    let rows = RowsByPlan::new(request.depth_rows);
+    let mut unused_rows = UnusedRows::new(request.depth_rows);
 
     progress(Progress::AuditOf(files.len() as u64));
     let work = |window: Range<usize>| -> Vec<(FileEntry, Option<PlanEntry>)> {
         window
             .into_par_iter()
             .map(|index| {
-                let result = one_file(request, &files, index, &fates[index]);
+                let result = one_file(request, &rows, &files, index, &fates[index]);
                 progress(Progress::Audited);
                 result
             })
@@ -175,7 +180,7 @@ fn run_here(
             tally.file(&file);
             writer.file(&file)?;
             if let Some(plan) = plan {
-                note_used_rows(&plan, &mut used_rows);
+                unused_rows.strike(&plan);
                 tally.plan(&plan, &models_of(&plan, request.models));
                 writer.plan(&plan)?;
             }
@@ -184,14 +189,15 @@ fn run_here(
     };
     // One window is written while the next is worked on.
     let mut done = Vec::new();
-    for start in (0..files.len()).step_by(WINDOW) {
-        let window = start..files.len().min(start + WINDOW);
+    for window in windows(&files, &fates) {
         let (written, next) = rayon::join(|| write(done), || work(window));
         written?;
         done = next;
     }
     write(done)?;
-    refuse_unused_rows(request.depth_rows, &used_rows)?;
+    if let Some(rows) = unused_rows.in_words() {
+        return Err(BatchError::UnusedDepthRows { rows });
+    }
 
     let summary = tally.summary(
         &models,
@@ -207,6 +213,26 @@ fn run_here(
     })
 }
 
+/// Runs of files whose results are held together, bounded by number and by the size of plans.
+fn windows(files: &[Surveyed], fates: &[Fate]) -> Vec<Range<usize>> {
+    let mut windows = Vec::new();
+    let (mut start, mut bytes) = (0, 0_u64);
+    for (index, (file, fate)) in files.iter().zip(fates).enumerate() {
+        let size_bytes = match (&file.seen, fate) {
+            (Seen::File { size_bytes, .. }, Fate::Audit { .. }) => *size_bytes,
+            _ => 0,
+        };
+        let full = index - start >= WINDOW_FILES || bytes + size_bytes > WINDOW_BYTES;
+        if full && index > start {
+            windows.push(start..index);
+            (start, bytes) = (index, 0);
+        }
+        bytes += size_bytes;
+    }
+    windows.push(start..files.len());
+    windows
+}
+
 /// Whether a file is a plan, or could not be read and so may be one.
 fn may_be_plan(file: &Surveyed) -> bool {
     match &file.seen {
@@ -218,6 +244,7 @@ fn may_be_plan(file: &Surveyed) -> bool {
 
 fn one_file(
     request: BatchRequest<'_>,
+    rows: &RowsByPlan,
     files: &[Surveyed],
     index: usize,
     fate: &Fate,
@@ -260,7 +287,7 @@ fn one_file(
             let message = "the same plan and the same bytes, audited once".to_owned();
             (entry(FileOutcome::DuplicateOf(original), message), None)
         }
-        Fate::Audit { rivals } => match audit_file(request, &file.path, &name, sha256, rivals) {
+        Fate::Audit { rivals } => match audit_file(request, rows, &file.path, sha256, rivals) {
             Ok(plan) => (entry(FileOutcome::Audited, message), Some(plan)),
             Err(reason) => (entry(FileOutcome::Unreadable, reason), None),
         },
@@ -277,10 +304,10 @@ const fn outcome_of(kind: FileKind) -> FileOutcome {
 
 fn audit_file(
     request: BatchRequest<'_>,
+    rows: &RowsByPlan,
     path: &Path,
-    name: &str,
     sha256: &str,
-    rivals: &[String],
+    rivals: &Rivals,
 ) -> Result<PlanEntry, String> {
     let file = read_file(path).map_err(|error| error.to_string())?;
     let Contents::Whole(bytes) = &file.contents else {
@@ -292,20 +319,14 @@ fn audit_file(
     guarded(|| {
         let plan = read_plan(bytes).map_err(|error| chain(&error))?;
         let uid = plan.identity.sop_instance_uid.value();
-        let rows: Vec<DepthRow> = request
-            .depth_rows
-            .iter()
-            .filter(|row| Some(&row.sop_instance_uid) == uid)
-            .cloned()
-            .collect();
         Ok(audit_plan(PlanInput {
-            file: name,
+            file: &path.display().to_string(),
             sha256,
             plan: &plan,
             rivals,
             models: request.models,
             site: request.site,
-            depth_rows: &rows,
+            depth_rows: rows.of(uid.map(String::as_str)),
         }))
     })?
 }
@@ -331,27 +352,6 @@ fn models_of(plan: &PlanEntry, models: &ModelSet) -> Vec<String> {
         .map(|model| model.name.clone())
         .collect();
     names.into_iter().collect()
-}
-
-fn note_used_rows(plan: &PlanEntry, used: &mut HashSet<(String, i32)>) {
-    if let Some(uid) = &plan.sop_instance_uid {
-        let numbers = plan.beams.iter().filter_map(|beam| beam.beam_number);
-        used.extend(numbers.map(|number| (uid.clone(), number)));
-    }
-}
-
-fn refuse_unused_rows(rows: &[DepthRow], used: &HashSet<(String, i32)>) -> Result<(), BatchError> {
-    let unused: Vec<String> = rows
-        .iter()
-        .filter(|row| !used.contains(&(row.sop_instance_uid.clone(), row.beam_number)))
-        .map(|row| format!("beam {} of {}", row.beam_number, row.sop_instance_uid))
-        .collect();
-    if unused.is_empty() {
-        return Ok(());
-    }
-    Err(BatchError::UnusedDepthRows {
-        rows: unused.join(", "),
-    })
 }
 
 fn model_uses(models: &ModelSet, day: jiff::civil::Date) -> Vec<ModelUse> {
@@ -412,4 +412,47 @@ fn run_id(run: &Run, files: &[Surveyed]) -> String {
     let mut id = sha256_hex(text.as_bytes());
     id.truncate(16);
     id
+}
+
+#[cfg(test)]
+mod tests {
+    use super::{WINDOW_BYTES, WINDOW_FILES, windows};
+    use crate::audit::Rivals;
+    use crate::batch::fate::Fate;
+    use crate::batch::survey::{Seen, Surveyed};
+    use crate::plan::FileKind;
+
+    fn plans(sizes_bytes: &[u64]) -> Vec<std::ops::Range<usize>> {
+        let files: Vec<Surveyed> = sizes_bytes
+            .iter()
+            .map(|&size_bytes| Surveyed {
+                path: "a".into(),
+                seen: Seen::File {
+                    size_bytes,
+                    sha256: String::new(),
+                    kind: FileKind::Plan,
+                    sop_instance_uid: None,
+                    message: None,
+                },
+            })
+            .collect();
+        let audit = Fate::Audit {
+            rivals: Rivals::default(),
+        };
+        windows(&files, &vec![audit; files.len()])
+    }
+
+    #[test]
+    fn verify_windows_are_bounded_by_number_and_by_size() {
+        assert_eq!(plans(&[1, 1, 1]).len(), 1);
+        assert_eq!(
+            plans(&vec![1; WINDOW_FILES + 1]),
+            [0..WINDOW_FILES, WINDOW_FILES..WINDOW_FILES + 1]
+        );
+        // A plan larger than the bound has a window to itself.
+        assert_eq!(
+            plans(&[1, 2 * WINDOW_BYTES, 1, WINDOW_BYTES / 2, WINDOW_BYTES / 2]),
+            [0..1, 1..2, 2..4, 4..5]
+        );
+    }
 }

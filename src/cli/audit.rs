@@ -4,7 +4,7 @@ use std::fs::File;
 use std::io::{self, BufReader, Write};
 use std::path::{Path, PathBuf};
 
-use anyhow::{Context, bail};
+use anyhow::bail;
 
 use super::args::{AuditArguments, FailOn};
 use super::clock::started;
@@ -13,11 +13,9 @@ use super::progress;
 use super::settings::{Effective, effective, load};
 use super::summary::write_summary;
 use crate::audit::ModelUse;
-use crate::batch::{self, BatchRequest, RunFacts, Tally, read_depth_table};
+use crate::batch::{self, BatchRequest, DepthTable, RunFacts, Tally, read_depth_table};
 use crate::beam_model::{ModelSet, ModelSeverity, check_machine};
-use crate::dose::DepthRow;
 use crate::intake::{IntakeError, find_files, paths_from_list};
-use crate::quantity::sha256_hex;
 use crate::report::{TargetState, target_state};
 
 /// Runs the main job.
@@ -34,21 +32,21 @@ pub(super) fn run(
     let models = load(&effective.models_folder)?;
     refuse_faulty_models(&models)?;
     refuse_foreign_folder(&arguments.out, arguments.force)?;
-    let depth_rows = arguments
+    let depths = arguments
         .depths
         .as_deref()
         .map(read_depth_table)
         .transpose()?
         .unwrap_or_default();
     let found = find_files(&paths(&arguments)?, &arguments.out)?;
-    let facts = facts(&arguments, &effective, &depth_rows)?;
+    let facts = facts(&arguments, &effective, &depths)?;
     let bar = progress::bar(arguments.quiet);
     let outcome = batch::run(
         BatchRequest {
             found: &found,
             models: &models,
             site: &effective.site,
-            depth_rows: &depth_rows,
+            depth_rows: &depths.rows,
             report_folder: &arguments.out,
             jobs: arguments.jobs.map(usize::from),
             facts: &facts,
@@ -125,17 +123,16 @@ fn refuse_foreign_folder(folder: &Path, force: bool) -> anyhow::Result<()> {
 fn facts(
     arguments: &AuditArguments,
     effective: &Effective,
-    depth_rows: &[DepthRow],
+    depths: &DepthTable,
 ) -> anyhow::Result<RunFacts> {
     let mut options = vec![format!("models = {}", effective.models_folder.display())];
     options.push(format!("fail-on = {}", fail_on_word(arguments.fail_on)));
     if let Some(file) = &arguments.depths {
-        let bytes = std::fs::read(file).with_context(|| file.display().to_string())?;
         options.push(format!(
             "depths = {} ({} rows, sha256 {})",
             file.display(),
-            depth_rows.len(),
-            sha256_hex(&bytes)
+            depths.rows.len(),
+            depths.sha256
         ));
     }
     let mut inputs: Vec<String> = arguments

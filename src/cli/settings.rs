@@ -2,6 +2,7 @@
 //! user's config folder, then what is built in. Never a search upward from the
 //! working folder: tolerances must not depend on where one stands.
 
+use std::io;
 use std::path::{Path, PathBuf};
 
 use anyhow::{Context, bail};
@@ -28,7 +29,11 @@ pub(super) fn effective(common: &CommonArguments) -> anyhow::Result<Effective> {
         config
             .as_ref()
             .map(|folder| folder.join("site.toml"))
-            .filter(|file| file.exists())
+            // One that is there and cannot be read must not give way to other tolerances.
+            .filter(|file| {
+                file.symlink_metadata()
+                    .map_or_else(|error| error.kind() != io::ErrorKind::NotFound, |_| true)
+            })
     });
     let (site, site_source) = match site_file {
         Some(file) => Site::load(&file)?,

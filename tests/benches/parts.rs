@@ -13,7 +13,7 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 use builder::{BeamSpec, DeviceSpec, PlanSpec, ReferenceSpec};
-use counterfoil::audit::{PlanEntry, PlanInput, audit_plan};
+use counterfoil::audit::{PlanEntry, PlanInput, Rivals, audit_plan};
 use counterfoil::beam_model::{ModelSet, load_models};
 use counterfoil::plan::{Plan, identify, read_plan};
 use counterfoil::quantity::sha256_hex;
@@ -98,7 +98,7 @@ fn audit(plan: &Plan, models: &ModelSet, site: &Site) -> PlanEntry {
         file: "plan",
         sha256: "",
         plan,
-        rivals: &[],
+        rivals: &Rivals::default(),
         models,
         site,
         depth_rows: &[],

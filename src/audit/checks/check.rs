@@ -1,7 +1,7 @@
 //! What a plan check is: a name in plain words, a severity, a text that is its
 //! doc comment, and a function that looks. The list of checks is in `registry`.
 
-use crate::audit::BeamEntry;
+use crate::audit::{BeamEntry, Rivals};
 use crate::dose::ObstacleKind;
 use crate::plan::{NoteKind, NoteScope, Plan, ReadingNote};
 use crate::settings::{Severity, Site};
@@ -14,7 +14,7 @@ pub struct CheckInput<'a> {
     /// Its beams as audited.
     pub beams: &'a [BeamEntry],
     /// Other files with the same SOP Instance UID and different content.
-    pub rivals: &'a [String],
+    pub rivals: &'a Rivals,
     /// The site's rules.
     pub site: &'a Site,
 }

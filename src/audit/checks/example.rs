@@ -1,7 +1,7 @@
 //! Plans for the checks' own tests: an ordinary one that no check objects to,
 //! and changes of it. Not read from DICOM, so that each shows one thing only.
 
-use crate::audit::{BeamEntry, Verdict};
+use crate::audit::{BeamEntry, Rivals, Verdict};
 use crate::dose::{
     BeamCalculation, BeamView, DepthBasis, DepthCandidate, Obstacle, ObstacleKind, Technique,
 };
@@ -15,7 +15,7 @@ use crate::quantity::Given;
 pub(super) struct Example {
     pub(super) plan: Plan,
     pub(super) beams: Vec<BeamEntry>,
-    pub(super) rivals: Vec<String>,
+    pub(super) rivals: Rivals,
 }
 
 /// One static beam of 100 MU and 1 Gy in one fraction group.
@@ -109,7 +109,7 @@ fn with_beams(mu_and_gy: &[(f64, f64)]) -> Example {
     Example {
         plan,
         beams,
-        rivals: Vec::new(),
+        rivals: Rivals::default(),
     }
 }
 

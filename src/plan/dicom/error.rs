@@ -159,7 +159,7 @@ pub enum ReadError {
         /// Limit.
         limit: usize,
     },
-    /// More beams, devices or control points than any plan has.
+    /// More beams, devices, control points, positions or references than any plan has.
     #[error("more than {limit} {what} in {place}; refused as damaged")]
     TooManyParts {
         /// What there is too much of.

@@ -1,6 +1,9 @@
-//! Counts that no plan reaches, checked before the parts of a plan are built:
-//! they keep a damaged or hostile file from growing many times its size in
-//! memory.
+//! Counts that no plan reaches: most are checked before the parts of a plan are
+//! built, the product of groups and beams as soon as both are read. They keep a
+//! damaged or hostile file from growing many times its size in memory, and from
+//! costing work that grows with the square of its size.
+
+use std::collections::HashMap;
 
 use dicom_core::Tag;
 use dicom_dictionary_std::tags;
@@ -8,6 +11,7 @@ use dicom_dictionary_std::tags;
 use super::error::ReadError;
 use super::name::named;
 use super::tree::{DataSet, Value};
+use crate::plan::{Beam, FractionGroup};
 
 /// Beams of a plan.
 const MAX_BEAMS: usize = 1_000;
@@ -15,6 +19,13 @@ const MAX_BEAMS: usize = 1_000;
 const MAX_CONTROL_POINTS: usize = 20_000;
 /// Items of one modifier sequence or device list.
 const MAX_DEVICES: usize = 50;
+/// Leaf positions, leaf boundaries and coordinates of outlines of all beams
+/// together. Ten arcs of two banks of 80 pairs have some 600,000.
+const MAX_POSITIONS: usize = 3_000_000;
+/// Beams as all fraction groups refer to them: each makes a row of the report.
+const MAX_REFERRED_BEAMS: usize = 2_000;
+/// Control points of all of those.
+const MAX_REFERRED_CONTROL_POINTS: usize = 100_000;
 
 /// Refuses a data set with more of something than any plan has.
 pub(super) fn check_limits(set: &DataSet<'_>) -> Result<(), ReadError> {
@@ -45,7 +56,65 @@ pub(super) fn check_limits(set: &DataSet<'_>) -> Result<(), ReadError> {
         tags::CONTROL_POINT_SEQUENCE,
         points,
         MAX_CONTROL_POINTS,
+    )?;
+    check(
+        "leaf positions and coordinates of outlines",
+        tags::BEAM_SEQUENCE,
+        items(set, tags::BEAM_SEQUENCE).iter().map(positions).sum(),
+        MAX_POSITIONS,
     )
+}
+
+/// Refuses fraction groups that refer to beams so often that the rows would
+/// have no end: a number that stands twice counts for every beam that bears it.
+pub(super) fn check_references(groups: &[FractionGroup], beams: &[Beam]) -> Result<(), ReadError> {
+    let mut bearers: HashMap<i32, (usize, usize)> = HashMap::new();
+    for beam in beams {
+        if let Some(&number) = beam.number.value() {
+            let (count, points) = bearers.entry(number).or_default();
+            *count += 1;
+            *points += beam.control_points.len();
+        }
+    }
+    let (mut rows, mut points) = (0_usize, 0_usize);
+    for reference in groups.iter().flat_map(|group| &group.beams) {
+        // One that leads to no beam is a row of the findings.
+        let (of_beams, of_points) = reference
+            .beam_number
+            .value()
+            .and_then(|number| bearers.get(number))
+            .map_or((1, 0), |&(count, points)| (count, points));
+        rows += of_beams;
+        points += of_points;
+    }
+    check(
+        "referenced beams in all fraction groups together",
+        tags::REFERENCED_BEAM_SEQUENCE,
+        rows,
+        MAX_REFERRED_BEAMS,
+    )?;
+    check(
+        "control points of referenced beams in all fraction groups together",
+        tags::REFERENCED_BEAM_SEQUENCE,
+        points,
+        MAX_REFERRED_CONTROL_POINTS,
+    )
+}
+
+/// Values of a beam's leaf and outline attributes, by their separators.
+fn positions(beam: &DataSet<'_>) -> usize {
+    beam.elements
+        .iter()
+        .map(|element| match &element.value {
+            Value::Items(items) => items.iter().map(positions).sum(),
+            Value::Bytes(bytes) => match element.tag {
+                tags::LEAF_POSITION_BOUNDARIES | tags::LEAF_JAW_POSITIONS | tags::BLOCK_DATA => {
+                    1 + bytes.iter().filter(|&&byte| byte == b'\\').count()
+                }
+                _ => 0,
+            },
+        })
+        .sum()
 }
 
 fn items<'n, 'a>(set: &'n DataSet<'a>, tag: Tag) -> &'n [DataSet<'a>] {

@@ -70,6 +70,7 @@ pub fn read_plan(bytes: &[u8]) -> Result<Plan, ReadError> {
 
     let beams = beam::read_beams(&root, &mut notes);
     let fraction_groups = fraction::read_fraction_groups(&root, &beams, &mut notes);
+    limits::check_references(&fraction_groups, &beams)?;
     let mut plan = Plan {
         identity,
         patient_setups: identity::read_patient_setups(&root, &mut notes),

@@ -2,7 +2,7 @@
 //! incredible, with the note that each deserves. What the attributes mean is
 //! left to the files named after the parts of a plan.
 
-use dicom_core::Tag;
+use dicom_core::{Tag, VR};
 
 use super::name::{named, push_step};
 use super::notes::Notes;
@@ -11,6 +11,16 @@ use super::text::Charset;
 use super::tree::{DataSet, Element, Found, Value};
 use crate::plan::{Effect, NoteKind, NoteScope, ReadingNote};
 use crate::quantity::{Given, Patient, Point, Quantity};
+
+/// Longest text that is kept, in bytes, with room for several values and for
+/// four bytes a character. Identifiers and names have 64 characters, free text
+/// 10,240 (PS3.5, 6.2); every row of the report repeats some names.
+const fn longest_text(vr: VR) -> usize {
+    match vr {
+        VR::LT | VR::ST | VR::UC | VR::UT => 40_960,
+        _ => 4_096,
+    }
+}
 
 /// A data set or item, with the way to it and what notes about it concern.
 #[derive(Clone, Copy)]
@@ -209,6 +219,21 @@ impl<'n, 'a> Node<'n, 'a> {
             self.note(notes, tag, NoteKind::MalformedValue, effect, message);
             return Reading::Unusable;
         };
+        let limit = longest_text(element.vr);
+        if bytes.len() > limit {
+            self.note_values(
+                notes,
+                tag,
+                NoteKind::MalformedValue,
+                effect,
+                "the text is far longer than the standard allows; it counts as absent",
+                (
+                    Some(format!("{} bytes", bytes.len())),
+                    Some(format!("{limit} bytes")),
+                ),
+            );
+            return Reading::Unusable;
+        }
         match self.charset.decode(element.vr, bytes) {
             text if text.is_empty() => Reading::Nothing,
             text => Reading::Value(text),

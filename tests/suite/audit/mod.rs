@@ -12,7 +12,7 @@ mod plan;
 use std::path::Path;
 use std::sync::LazyLock;
 
-use counterfoil::audit::{BeamEntry, PlanEntry, PlanInput, audit_plan};
+use counterfoil::audit::{BeamEntry, PlanEntry, PlanInput, Rivals, audit_plan};
 use counterfoil::beam_model::{ModelSet, load_models};
 use counterfoil::dose::DepthRow;
 use counterfoil::plan::read_plan;
@@ -41,7 +41,7 @@ fn second_beam() -> BeamSpec {
         .with_gantry(180.0)
 }
 
-fn audit_bytes(bytes: &[u8], site: &Site, rivals: &[String], rows: &[DepthRow]) -> PlanEntry {
+fn audit_bytes(bytes: &[u8], site: &Site, rivals: &Rivals, rows: &[DepthRow]) -> PlanEntry {
     let plan = read_plan(bytes).unwrap();
     audit_plan(PlanInput {
         file: "a.dcm",
@@ -56,7 +56,7 @@ fn audit_bytes(bytes: &[u8], site: &Site, rivals: &[String], rows: &[DepthRow]) 
 
 fn audit(spec: &PlanSpec) -> PlanEntry {
     let bytes = encode(&spec.object(), Encoding::ExplicitLittle);
-    audit_bytes(&bytes, &Site::default(), &[], &[])
+    audit_bytes(&bytes, &Site::default(), &Rivals::default(), &[])
 }
 
 fn only_beam(spec: &PlanSpec) -> BeamEntry {

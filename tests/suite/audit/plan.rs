@@ -1,6 +1,6 @@
 //! The plan as a whole: verdict, prescription, copies that contradict, the user's depths.
 
-use counterfoil::audit::Verdict;
+use counterfoil::audit::{Rivals, Verdict};
 use counterfoil::dose::{DepthBasis, DepthRow};
 use counterfoil::settings::Site;
 
@@ -80,7 +80,12 @@ fn verify_a_treatment_beam_without_a_reference_is_never_within() {
 #[test]
 fn verify_copies_that_contradict_bar_the_plan() {
     let bytes = encode(&reference_plan().object(), Encoding::ExplicitLittle);
-    let entry = audit_bytes(&bytes, &Site::default(), &["b.dcm".to_owned()], &[]);
+    let entry = audit_bytes(
+        &bytes,
+        &Site::default(),
+        &Rivals::new(1, ["b.dcm".to_owned()]),
+        &[],
+    );
     assert_eq!(entry.verdict, Verdict::NotVerifiable);
     assert!(
         entry.beams[0]
@@ -116,7 +121,7 @@ fn verify_the_prescription_is_the_one_that_is_stated() {
 fn verify_the_users_depth_comes_first() {
     let spec = reference_plan().map_beam(|beam| beam.with_ssd(85.0));
     let bytes = encode(&spec.object(), Encoding::ExplicitLittle);
-    let alone = audit_bytes(&bytes, &Site::default(), &[], &[]);
+    let alone = audit_bytes(&bytes, &Site::default(), &Rivals::default(), &[]);
     assert_ne!(alone.verdict, Verdict::Within);
     let row = DepthRow {
         sop_instance_uid: alone.sop_instance_uid.clone().unwrap(),
@@ -126,7 +131,7 @@ fn verify_the_users_depth_comes_first() {
         ssd_cm: Some(90.0),
         independent: true,
     };
-    let entry = audit_bytes(&bytes, &Site::default(), &[], &[row]);
+    let entry = audit_bytes(&bytes, &Site::default(), &Rivals::default(), &[row]);
     let beam = &entry.beams[0];
     near(beam.independent_dose_gy, REFERENCE_DOSE_GY, 1e-9);
     assert_eq!(beam.calculation.depths[0].basis, DepthBasis::Table);

@@ -313,6 +313,23 @@ fn verify_a_closed_pipe_changes_no_status() {
     assert_eq!(status.code(), Some(BEYOND));
 }
 
+/// A table for another folder is told in one line, not in thousands of rows.
+#[test]
+fn verify_a_long_table_that_fits_no_plan_is_told_briefly() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    let table = place.folder.path().join("depths.csv");
+    let mut rows =
+        "sop_instance_uid,beam_number,depth_cm,effective_depth_cm,ssd_cm,independent\n".to_owned();
+    for number in 1..=20_000 {
+        rows.push_str(&format!("1.2.{number},1,10,,90,yes\n"));
+    }
+    fs::write(&table, rows).unwrap();
+    let output = place.audit(&["--depths", table.to_str().unwrap()]);
+    assert_eq!(status(&output), FAILED);
+    assert!(stderr(&output).contains("and 19995 rows more"));
+    assert!(stderr(&output).len() < 500, "{}", stderr(&output));
+}
+
 /// What the record says of the models agrees with the page: only what a plan was calculated with is used.
 #[test]
 fn verify_the_record_names_the_models_that_were_used() {
@@ -330,4 +347,66 @@ fn verify_the_record_names_the_models_that_were_used() {
     let page = fs::read_to_string(place.report().join("report.html")).unwrap();
     assert_eq!(page.matches("<td>used</td>").count(), 1);
     assert_eq!(page.matches("<td>not used</td>").count(), offered.len() - 1);
+}
+
+/// The user's own site file that is a broken link is an error, not a reason for other tolerances.
+#[cfg(unix)]
+#[test]
+fn verify_a_broken_site_file_never_gives_way_to_defaults() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    let config = place.folder.path().join("config");
+    fs::create_dir_all(config.join("counterfoil")).unwrap();
+    let audit = || {
+        program()
+            .env("XDG_CONFIG_HOME", &config)
+            .arg("audit")
+            .arg(place.plans())
+            .arg("--models")
+            .arg(test_models())
+            .arg("--out")
+            .arg(place.report())
+            .output()
+            .unwrap()
+    };
+    assert_eq!(status(&audit()), WITHIN);
+    std::os::unix::fs::symlink("not-there.toml", config.join("counterfoil/site.toml")).unwrap();
+    let output = audit();
+    assert_eq!(status(&output), FAILED);
+    assert!(stderr(&output).contains("site.toml"), "{}", stderr(&output));
+}
+
+/// A depth table from a pipe can be read only once, and its fingerprint is that of what was read.
+#[cfg(unix)]
+#[test]
+fn verify_a_depth_table_may_be_a_pipe() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    place.audit(&[]);
+    let uid = place.column("plans.csv", "sop_instance_uid").remove(0);
+    let rows = format!(
+        "sop_instance_uid,beam_number,depth_cm,effective_depth_cm,ssd_cm,independent\n{uid},1,10,,90,yes\n"
+    );
+    let table = place.folder.path().join("depths.csv");
+    fs::write(&table, &rows).unwrap();
+    let mut command = program();
+    command
+        .arg("audit")
+        .arg(place.plans())
+        .args(["--depths", "/dev/stdin", "--models"])
+        .arg(test_models())
+        .arg("--out")
+        .arg(place.report())
+        .stdin(std::process::Stdio::piped());
+    let mut child = command
+        .stdout(std::process::Stdio::piped())
+        .spawn()
+        .unwrap();
+    let mut pipe = child.stdin.take().unwrap();
+    std::io::Write::write_all(&mut pipe, rows.as_bytes()).unwrap();
+    drop(pipe);
+    assert_eq!(status(&child.wait_with_output().unwrap()), WITHIN);
+    let fingerprint = |text: &str| text.split("sha256 ").nth(1).unwrap()[..64].to_owned();
+    let json = || fs::read_to_string(place.report().join("audit.json")).unwrap();
+    let of_pipe = fingerprint(&json());
+    place.audit(&["--depths", table.to_str().unwrap()]);
+    assert_eq!(of_pipe, fingerprint(&json()));
 }

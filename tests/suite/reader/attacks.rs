@@ -8,11 +8,11 @@ use counterfoil::quantity::Given;
 use dicom_core::VR;
 use dicom_dictionary_std::tags;
 
-use super::plans::everything;
+use super::plans::{block, everything};
 use super::raw::{
     UNDEFINED, implicit, item, item_end, long, plan_then, plan_with, sequence_end, short,
 };
-use crate::builder::{Encoding, PlanSpec, data_set_offset};
+use crate::builder::{BlockSpec, Encoding, PlanSpec, data_set_offset};
 
 /// 2,000 nested sequences would overflow the stack of a reader without a bound.
 #[test]
@@ -293,4 +293,61 @@ fn verify_counts_beyond_any_plan_are_refused() {
     assert!(matches!(error, ReadError::TooMany { .. }), "{error}");
     let error = read_plan(&vec![0; (32 << 20) + 1]).expect_err("too large");
     assert!(matches!(error, ReadError::TooLarge { .. }), "{error}");
+}
+
+/// References times beams that bear the same number: 60 x 40 rows, and 30 x 40 of 100 control points.
+#[test]
+fn verify_references_that_multiply_beams_are_refused() {
+    let plan = |references: usize, beams: usize, points: u16| {
+        let mut spec = PlanSpec::default().map_beam(|beam| beam.with_arc(90.0, "CW", points));
+        spec.beams = vec![spec.beams[0].clone(); beams];
+        spec.groups[0].beams = vec![spec.groups[0].beams[0].clone(); references];
+        read_plan(&spec.bytes())
+    };
+    assert!(plan(40, 40, 2).is_ok());
+    for (references, beams, points) in [(60, 40, 2), (30, 40, 100)] {
+        let error = plan(references, beams, points).expect_err("too many");
+        assert!(matches!(error, ReadError::TooManyParts { .. }), "{error}");
+    }
+}
+
+/// 160 outlines of 10,000 points each are 3.2 million coordinates; every one alone would be read.
+#[test]
+fn verify_outlines_beyond_any_plan_are_refused() {
+    let plan = |beams: usize| {
+        let mut spec = PlanSpec::default();
+        let block = BlockSpec {
+            outline_cm: vec![[1.0, 2.0]; 10_000],
+            ..block()
+        };
+        spec.beams[0].blocks = vec![block; 40];
+        spec.beams = vec![spec.beams[0].clone(); beams];
+        read_plan(&spec.bytes())
+    };
+    assert!(plan(3).is_ok());
+    let error = plan(4).expect_err("too many");
+    assert!(matches!(error, ReadError::TooManyParts { .. }), "{error}");
+}
+
+/// A name of 60 kB would stand in every row of the report.
+#[test]
+fn verify_text_far_beyond_the_standard_counts_as_absent() {
+    let read_with = |length: usize| {
+        let bytes = PlanSpec::default().with_label(&"L".repeat(length)).bytes();
+        read_plan(&bytes).expect("readable")
+    };
+    assert_eq!(
+        read_with(4_000).identity.plan_label.get(),
+        Some("L".repeat(4_000))
+    );
+    let plan = read_with(60_000);
+    assert_eq!(plan.identity.plan_label, Given::Absent);
+    let note = plan
+        .notes
+        .iter()
+        .find(|note| note.place.contains("300A,0002"));
+    let note = note.expect("a note");
+    assert_eq!(note.kind, NoteKind::MalformedValue);
+    assert!(note.message.contains("longer"), "{}", note.message);
+    assert!(note.message.len() < 200);
 }

@@ -4,7 +4,7 @@
 
 use std::collections::BTreeSet;
 
-use counterfoil::audit::{PlanEntry, PlanInput, Verdict, audit_plan};
+use counterfoil::audit::{PlanEntry, PlanInput, Rivals, Verdict, audit_plan};
 use counterfoil::dose::ObstacleKind;
 use counterfoil::plan::read_plan;
 use counterfoil::settings::Site;
@@ -18,7 +18,7 @@ fn audited(file: &str, bytes: &[u8]) -> PlanEntry {
         file,
         sha256: "",
         plan: &plan,
-        rivals: &[],
+        rivals: &Rivals::default(),
         models: models(),
         site: &Site::default(),
         depth_rows: &[],

@@ -11,7 +11,7 @@ use dicom_dictionary_std::tags;
 use super::error::ReadError;
 use super::name::named;
 use super::tree::{DataSet, Value};
-use crate::plan::{Beam, FractionGroup};
+use crate::plan::{Beam, ControlPoint, FractionGroup};
 
 /// Beams of a plan.
 const MAX_BEAMS: usize = 1_000;
@@ -24,8 +24,10 @@ const MAX_DEVICES: usize = 50;
 const MAX_POSITIONS: usize = 3_000_000;
 /// Beams as all fraction groups refer to them: each makes a row of the report.
 const MAX_REFERRED_BEAMS: usize = 2_000;
-/// Control points of all of those.
-const MAX_REFERRED_CONTROL_POINTS: usize = 100_000;
+/// Control points and point depths of all of those.
+const MAX_REFERRED_POINTS: usize = 100_000;
+/// Leaf positions and coordinates of outlines of all of those, inherited ones too.
+const MAX_REFERRED_POSITIONS: usize = 10_000_000;
 
 /// Refuses a data set with more of something than any plan has.
 pub(super) fn check_limits(set: &DataSet<'_>) -> Result<(), ReadError> {
@@ -65,40 +67,83 @@ pub(super) fn check_limits(set: &DataSet<'_>) -> Result<(), ReadError> {
     )
 }
 
-/// Refuses fraction groups that refer to beams so often that the rows would
-/// have no end: a number that stands twice counts for every beam that bears it.
-pub(super) fn check_references(groups: &[FractionGroup], beams: &[Beam]) -> Result<(), ReadError> {
-    let mut bearers: HashMap<i32, (usize, usize)> = HashMap::new();
-    for beam in beams {
-        if let Some(&number) = beam.number.value() {
-            let (count, points) = bearers.entry(number).or_default();
-            *count += 1;
-            *points += beam.control_points.len();
+/// What one row of the report has to go through.
+#[derive(Clone, Copy, Debug, Default)]
+struct Load {
+    rows: usize,
+    points: usize,
+    positions: usize,
+}
+
+impl Load {
+    fn of_beam(beam: &Beam) -> Self {
+        let of_leaves = |point: &ControlPoint| -> usize {
+            let banks = point.leaves.iter();
+            banks
+                .filter_map(|bank| bank.positions_cm.value())
+                .map(|positions_cm| positions_cm.len())
+                .sum()
+        };
+        let outlines = beam.blocks.iter().filter_map(|block| {
+            let outline_cm = block.outline_cm.value()?;
+            Some(2 * outline_cm.len())
+        });
+        let points = &beam.control_points;
+        Self {
+            rows: 1,
+            points: points
+                .iter()
+                .map(|point| 1 + point.referenced_doses.len())
+                .sum(),
+            positions: points.iter().map(of_leaves).sum::<usize>() + outlines.sum::<usize>(),
         }
     }
-    let (mut rows, mut points) = (0_usize, 0_usize);
-    for reference in groups.iter().flat_map(|group| &group.beams) {
-        // One that leads to no beam is a row of the findings.
-        let (of_beams, of_points) = reference
-            .beam_number
-            .value()
-            .and_then(|number| bearers.get(number))
-            .map_or((1, 0), |&(count, points)| (count, points));
-        rows += of_beams;
-        points += of_points;
+
+    fn add(&mut self, other: Self) {
+        self.rows += other.rows;
+        self.points += other.points;
+        self.positions += other.positions;
     }
-    check(
-        "referenced beams in all fraction groups together",
-        tags::REFERENCED_BEAM_SEQUENCE,
-        rows,
-        MAX_REFERRED_BEAMS,
-    )?;
-    check(
-        "control points of referenced beams in all fraction groups together",
-        tags::REFERENCED_BEAM_SEQUENCE,
-        points,
-        MAX_REFERRED_CONTROL_POINTS,
-    )
+}
+
+/// Refuses fraction groups that refer to beams so often that the work would
+/// have no end: a number that stands twice counts for every beam that bears it.
+pub(super) fn check_references(groups: &[FractionGroup], beams: &[Beam]) -> Result<(), ReadError> {
+    let mut of_number: HashMap<i32, Load> = HashMap::new();
+    for beam in beams {
+        if let Some(&number) = beam.number.value() {
+            let of_beam = Load::of_beam(beam);
+            of_number.entry(number).or_default().add(of_beam);
+        }
+    }
+    let mut all = Load::default();
+    for reference in groups.iter().flat_map(|group| &group.beams) {
+        let number = reference.beam_number.value();
+        let mut load = number
+            .and_then(|number| of_number.get(number).copied())
+            .unwrap_or_default();
+        // A reference that leads to no beam is a row of the findings.
+        load.rows = load.rows.max(1);
+        load.points += load.rows * reference.point_depths.len();
+        all.add(load);
+    }
+    let tag = tags::REFERENCED_BEAM_SEQUENCE;
+    for (what, found, limit) in [
+        ("references to beams", all.rows, MAX_REFERRED_BEAMS),
+        (
+            "control points and point depths of beams as referred to",
+            all.points,
+            MAX_REFERRED_POINTS,
+        ),
+        (
+            "leaf positions and coordinates of outlines of beams as referred to",
+            all.positions,
+            MAX_REFERRED_POSITIONS,
+        ),
+    ] {
+        check(what, tag, found, limit)?;
+    }
+    Ok(())
 }
 
 /// Values of a beam's leaf and outline attributes, by their separators.

@@ -12,7 +12,7 @@ use super::plans::{block, everything};
 use super::raw::{
     UNDEFINED, implicit, item, item_end, long, plan_then, plan_with, sequence_end, short,
 };
-use crate::builder::{BlockSpec, Encoding, PlanSpec, data_set_offset};
+use crate::builder::{BlockSpec, DepthSpec, Encoding, PlanSpec, data_set_offset};
 
 /// 2,000 nested sequences would overflow the stack of a reader without a bound.
 #[test]
@@ -295,18 +295,39 @@ fn verify_counts_beyond_any_plan_are_refused() {
     assert!(matches!(error, ReadError::TooLarge { .. }), "{error}");
 }
 
-/// References times beams that bear the same number: 60 x 40 rows, and 30 x 40 of 100 control points.
+/// What references times beams that bear the same number would come to: rows,
+/// control points (30 x 40 x 100), point depths (2 x 40 x 2,000), coordinates of outlines (600 x 20,000).
 #[test]
 fn verify_references_that_multiply_beams_are_refused() {
-    let plan = |references: usize, beams: usize, points: u16| {
-        let mut spec = PlanSpec::default().map_beam(|beam| beam.with_arc(90.0, "CW", points));
+    let plan = |spec: PlanSpec, references: usize, beams: usize| {
+        let mut spec = spec;
         spec.beams = vec![spec.beams[0].clone(); beams];
         spec.groups[0].beams = vec![spec.groups[0].beams[0].clone(); references];
         read_plan(&spec.bytes())
     };
-    assert!(plan(40, 40, 2).is_ok());
-    for (references, beams, points) in [(60, 40, 2), (30, 40, 100)] {
-        let error = plan(references, beams, points).expect_err("too many");
+    let arc = |points| PlanSpec::default().map_beam(|beam| beam.with_arc(90.0, "CW", points));
+    let mut depths = PlanSpec::default();
+    let depth = DepthSpec {
+        depth_cm: Some(10.0),
+        ..DepthSpec::default()
+    };
+    depths.groups[0].beams[0].verification = vec![depth; 2_000];
+    let mut outline = PlanSpec::default();
+    outline.beams[0].blocks = vec![BlockSpec {
+        outline_cm: vec![[1.0, 2.0]; 10_000],
+        ..block()
+    }];
+
+    assert!(plan(arc(2), 40, 40).is_ok());
+    assert!(plan(depths.clone(), 1, 40).is_ok());
+    assert!(plan(outline.clone(), 400, 1).is_ok());
+    for (spec, references, beams) in [
+        (arc(2), 60, 40),
+        (arc(100), 30, 40),
+        (depths, 2, 40),
+        (outline, 600, 1),
+    ] {
+        let error = plan(spec, references, beams).expect_err("too many");
         assert!(matches!(error, ReadError::TooManyParts { .. }), "{error}");
     }
 }

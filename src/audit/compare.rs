@@ -5,7 +5,7 @@
 use super::levels::levels_for;
 use super::{BeamEntry, Judgement, Verdict};
 use crate::dose::{BeamCalculation, Obstacle, ObstacleKind, Technique};
-use crate::plan::{DoseMeaning, DoseType, Plan, ReferencedBeam};
+use crate::plan::{DeliveryType, DoseMeaning, DoseType, Plan, ReferencedBeam};
 use crate::settings::Site;
 
 /// A beam's entry before its neighbours are looked at.
@@ -151,18 +151,11 @@ pub(super) fn is_fraction_level(plan: &Plan, entry: &BeamEntry) -> bool {
 }
 
 fn not_treated_reason(plan: &Plan, calculation: &BeamCalculation) -> String {
-    use crate::plan::DeliveryType;
-    let delivery = plan
+    let word = plan
         .beams
         .get(calculation.beam_index)
-        .and_then(|beam| beam.delivery.value());
-    let word = match delivery {
-        Some(DeliveryType::Setup) => "SETUP",
-        Some(DeliveryType::OpenPortfilm) => "OPEN_PORTFILM",
-        Some(DeliveryType::TrmtPortfilm) => "TRMT_PORTFILM",
-        Some(DeliveryType::Verification) => "VERIFICATION",
-        _ => "not stated",
-    };
+        .and_then(|beam| beam.delivery.value())
+        .map_or("not stated", DeliveryType::term);
     format!("Treatment Delivery Type (300A,00CE) is {word}: not delivered for treatment")
 }
 

@@ -5,6 +5,7 @@ use std::path::PathBuf;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
+use super::fail_on::FailOn;
 use crate::quantity::Quantity;
 
 /// Independent check of radiotherapy plans in batch.
@@ -74,17 +75,6 @@ pub(super) struct AuditArguments {
     /// Print the settings in force and where each came from, and stop
     #[arg(long)]
     pub(super) show_settings: bool,
-}
-
-/// From which level on the exit status is 1.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
-pub(super) enum FailOn {
-    /// Beyond tolerance
-    Tolerance,
-    /// Beyond the action level only
-    Action,
-    /// Never
-    Never,
 }
 
 #[derive(Debug, Args)]

@@ -6,9 +6,10 @@ use std::path::{Path, PathBuf};
 
 use anyhow::bail;
 
-use super::args::{AuditArguments, FailOn};
+use super::args::AuditArguments;
 use super::clock::started;
 use super::exit::{Completeness, Exit};
+use super::fail_on::FailOn;
 use super::progress;
 use super::settings::{Effective, effective, load};
 use super::summary::write_summary;
@@ -126,7 +127,7 @@ fn facts(
     depths: &DepthTable,
 ) -> anyhow::Result<RunFacts> {
     let mut options = vec![format!("models = {}", effective.models_folder.display())];
-    options.push(format!("fail-on = {}", fail_on_word(arguments.fail_on)));
+    options.push(format!("fail-on = {}", arguments.fail_on.word()));
     if let Some(file) = &arguments.depths {
         options.push(format!(
             "depths = {} ({} rows, sha256 {})",
@@ -150,14 +151,6 @@ fn facts(
         options,
         site_source: effective.site_source.clone(),
     })
-}
-
-const fn fail_on_word(fail_on: FailOn) -> &'static str {
-    match fail_on {
-        FailOn::Tolerance => "tolerance",
-        FailOn::Action => "action",
-        FailOn::Never => "never",
-    }
 }
 
 fn exit_words(fail_on: FailOn) -> fn(&Tally, &[ModelUse]) -> String {

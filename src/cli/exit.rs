@@ -1,6 +1,6 @@
 //! Exit statuses: the one table.
 
-use super::args::FailOn;
+use super::fail_on::FailOn;
 use crate::audit::{ModelUse, Verdict};
 use crate::batch::Tally;
 use crate::settings::Severity;

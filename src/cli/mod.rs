@@ -7,6 +7,7 @@ mod audit;
 mod checks;
 mod clock;
 mod exit;
+mod fail_on;
 mod field;
 mod model;
 mod pipe;

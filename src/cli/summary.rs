@@ -3,8 +3,8 @@
 use std::io::{self, Write};
 use std::path::Path;
 
-use super::args::FailOn;
 use super::exit::{Completeness, Exit};
+use super::fail_on::FailOn;
 use crate::audit::{Count, Verdict};
 use crate::batch::{Outcome, Tally};
 use crate::settings::Severity;

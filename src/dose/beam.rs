@@ -5,7 +5,8 @@
 
 use super::aperture::{collimator_square, mean_openings, point_square, view_at};
 use super::delivery::{Interval, delivering_points, intervals};
-use super::depth::{DepthFindings, DepthQuestion, DepthRow, find_depths};
+use super::depth::find_depths;
+use super::depth_question::{DepthFindings, DepthQuestion, DepthRow};
 use super::limits::outside_method;
 use super::modifier::{Modifiers, bolus, couch, hardware};
 use super::placement::{Placement, place};

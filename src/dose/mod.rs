@@ -8,6 +8,7 @@ mod aperture;
 mod beam;
 mod delivery;
 mod depth;
+mod depth_question;
 mod factors;
 mod field;
 pub mod geometry;
@@ -28,7 +29,7 @@ mod trace;
 
 pub use aperture::{collimator_square, point_square};
 pub use beam::{BeamRequest, ModelAnswer, calculate_beam};
-pub use depth::DepthRow;
+pub use depth_question::DepthRow;
 pub use factors::dose_per_mu;
 pub use field::{FactorError, FieldDepth, FieldInput, FieldModel, Form, Tray, Typed};
 pub use limits::outside_method;

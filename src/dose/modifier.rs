@@ -3,7 +3,7 @@
 //! Factors that the plan states are the planning system's word and are not used.
 
 use super::delivery::turn_between_deg;
-use super::depth::DepthFindings;
+use super::depth_question::DepthFindings;
 use super::{DepthBasis, Obstacle, ObstacleKind, Tray};
 use crate::beam_model::{BeamModel, CouchArc};
 use crate::plan::Beam;

@@ -3,7 +3,7 @@
 //! points. Each set is used as a set, and sets that contradict each other are an
 //! obstacle. Conventions and the other bases are in `depth`.
 
-use super::depth::{DepthFindings, DepthQuestion};
+use super::depth_question::{DepthFindings, DepthQuestion};
 use super::{DepthBasis, DepthCandidate, PointBasis};
 use crate::plan::{PointDepth, PointDepthPlace};
 use crate::quantity::{Given, tolerance};

@@ -136,6 +136,20 @@ impl DeliveryType {
         }
     }
 
+    /// The DICOM term.
+    #[must_use]
+    pub fn term(&self) -> &str {
+        match self {
+            Self::Treatment => "TREATMENT",
+            Self::Continuation => "CONTINUATION",
+            Self::Setup => "SETUP",
+            Self::OpenPortfilm => "OPEN_PORTFILM",
+            Self::TrmtPortfilm => "TRMT_PORTFILM",
+            Self::Verification => "VERIFICATION",
+            Self::Other(text) => text,
+        }
+    }
+
     /// Whether such a beam is delivered for treatment. Unknown terms count as treatment.
     #[must_use]
     pub const fn is_treatment(&self) -> bool {

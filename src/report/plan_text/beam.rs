@@ -4,7 +4,8 @@ use super::ControlPointDetail;
 use super::control_point;
 use super::lines::{Lines, as_is, in_unit};
 use super::modifiers;
-use crate::plan::{Beam, DeliveryType, DeviceKind, LimitingDevice, RadiationType};
+use super::units::energy_unit;
+use crate::plan::{Beam, LimitingDevice};
 use crate::report::plain_text::trimmed;
 
 pub(super) fn beam(lines: &mut Lines, beam: &Beam, index: usize, detail: ControlPointDetail) {
@@ -27,7 +28,9 @@ pub(super) fn beam(lines: &mut Lines, beam: &Beam, index: usize, detail: Control
     });
     lines.optional("fluence mode", &beam.energy.fluence_mode, as_is);
     lines.optional("fluence mode ID", &beam.energy.fluence_mode_id, as_is);
-    lines.given("treatment delivery type", &beam.delivery, delivery);
+    lines.given("treatment delivery type", &beam.delivery, |delivery| {
+        delivery.term().to_owned()
+    });
     lines.optional("high-dose technique", &beam.high_dose_technique, as_is);
     lines.given("machine", &beam.machine, as_is);
     lines.optional("machine manufacturer", &beam.machine_manufacturer, as_is);
@@ -59,52 +62,8 @@ pub(super) fn beam(lines: &mut Lines, beam: &Beam, index: usize, detail: Control
     control_point::control_points(lines, beam, detail);
 }
 
-pub(super) const fn energy_unit(beam: &Beam) -> &'static str {
-    match beam.radiation.value() {
-        Some(RadiationType::Photon) => "MV",
-        Some(RadiationType::Electron) => "MeV",
-        _ => "MV or MeV",
-    }
-}
-
-fn delivery(delivery: &DeliveryType) -> String {
-    match delivery {
-        DeliveryType::Treatment => "TREATMENT",
-        DeliveryType::Continuation => "CONTINUATION",
-        DeliveryType::Setup => "SETUP",
-        DeliveryType::OpenPortfilm => "OPEN_PORTFILM",
-        DeliveryType::TrmtPortfilm => "TRMT_PORTFILM",
-        DeliveryType::Verification => "VERIFICATION",
-        DeliveryType::Other(text) => text,
-    }
-    .to_owned()
-}
-
-/// The DICOM term of a device.
-pub(super) fn device_term(kind: &DeviceKind) -> String {
-    let layered = |name: &str, layer: u8| {
-        if layer == 0 {
-            name.to_owned()
-        } else {
-            format!("{name}{layer}")
-        }
-    };
-    match kind {
-        DeviceKind::X => "X".to_owned(),
-        DeviceKind::Y => "Y".to_owned(),
-        DeviceKind::AsymX => "ASYMX".to_owned(),
-        DeviceKind::AsymY => "ASYMY".to_owned(),
-        DeviceKind::Mlcx { layer } => layered("MLCX", *layer),
-        DeviceKind::Mlcy { layer } => layered("MLCY", *layer),
-        DeviceKind::Other(text) => text.clone(),
-    }
-}
-
 fn limiting_device(lines: &mut Lines, device: &LimitingDevice, remark: &str) {
-    lines.plain(&format!(
-        "limiting device {}{remark}:",
-        device_term(&device.kind)
-    ));
+    lines.plain(&format!("limiting device {}{remark}:", device.kind.term()));
     lines.optional("leaf or jaw pairs", &device.pairs, as_is);
     lines.optional(
         "distance from the source",

@@ -2,9 +2,9 @@
 //! point stated it or an earlier one did.
 
 use super::ControlPointDetail;
-use super::beam::{device_term, energy_unit};
 use super::lines::{Lines, as_is, in_unit, sides, yes_no};
 use super::plan::{point, point_depth};
+use super::units::energy_unit;
 use crate::plan::{Beam, ControlPoint, LeafAxis, LeafPositions};
 use crate::quantity::Given;
 use crate::report::plain_text::rounded;
@@ -107,7 +107,7 @@ fn one(lines: &mut Lines, beam: &Beam, control_point: &ControlPoint) {
 }
 
 fn leaf_positions(lines: &mut Lines, beam: &Beam, leaves: &LeafPositions) {
-    let name = format!("leaves {}", device_term(&leaves.kind));
+    let name = format!("leaves {}", leaves.kind.term());
     lines.given(&name, &leaves.positions_cm, |positions| {
         format!("{} positions", positions.len())
     });

@@ -8,6 +8,7 @@ mod lines;
 mod modifiers;
 mod overview;
 mod plan;
+mod units;
 
 use crate::plan::Plan;
 use lines::{LEGEND, Lines};

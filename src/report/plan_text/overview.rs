@@ -3,7 +3,7 @@
 //! fraction group. Where each value stands is said further down.
 
 use super::lines::Lines;
-use super::plan::meterset_unit;
+use super::units::meterset_unit;
 use crate::plan::{Beam, Plan, ReferencedBeam};
 use crate::quantity::Given;
 use crate::report::plain_text::{one_line, trimmed};

@@ -2,6 +2,7 @@
 //! prescription, fraction groups, reading notes.
 
 use super::lines::{Lines, as_is, in_unit, yes_no};
+use super::units::meterset_unit;
 use crate::plan::{
     Approval, DoseMeaning, DoseReference, DoseType, Effect, FractionGroup, Identity, NoteScope,
     PatientPosition, Plan, PointDepth, PointDepthPlace, ReadingNote, ReferencedBeam,
@@ -129,17 +130,6 @@ pub(super) fn fraction_group(lines: &mut Lines, plan: &Plan, group: &FractionGro
     for beam in &group.beams {
         referenced_beam(lines, beam, &meterset_unit(plan, beam));
     }
-}
-
-/// The unit of a meterset: what the beam of that number names, MU where it names none.
-pub(super) fn meterset_unit(plan: &Plan, reference: &ReferencedBeam) -> String {
-    plan.beams
-        .iter()
-        .find(|beam| {
-            beam.number.get().is_some() && beam.number.get() == reference.beam_number.get()
-        })
-        .and_then(|beam| beam.dosimeter_unit.value().cloned())
-        .unwrap_or_else(|| "MU".to_owned())
 }
 
 fn referenced_beam(lines: &mut Lines, beam: &ReferencedBeam, unit: &str) {

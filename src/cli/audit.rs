@@ -12,7 +12,7 @@ use super::exit::{Completeness, Exit};
 use super::fail_on::FailOn;
 use super::progress;
 use super::settings::{Effective, effective, load};
-use super::summary::write_summary;
+use super::summary::{About, write_summary};
 use crate::audit::ModelUse;
 use crate::batch::{self, BatchRequest, DepthTable, RunFacts, Tally, read_depth_table};
 use crate::beam_model::{ModelSet, ModelSeverity, check_machine};
@@ -59,7 +59,12 @@ pub(super) fn run(
     let outcome = outcome?;
     let exit = Exit::of_audit(&outcome.tally, &outcome.models, arguments.fail_on);
     if !arguments.quiet {
-        write_summary(out, &outcome, &arguments.out, exit, arguments.fail_on)?;
+        let about = About {
+            folder: &arguments.out,
+            site: &effective.site_source,
+            fail_on: arguments.fail_on,
+        };
+        write_summary(out, &outcome, exit, &about)?;
     }
     // A status other than 0 is worth a word even to a script that throws stdout away.
     if arguments.quiet && exit != Exit::Within {

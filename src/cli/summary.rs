@@ -7,17 +7,27 @@ use super::exit::{Completeness, Exit};
 use super::fail_on::FailOn;
 use crate::audit::{Count, Verdict};
 use crate::batch::{Outcome, Tally};
-use crate::settings::Severity;
+use crate::settings::{Severity, SiteSource};
+
+/// What the summary is about besides the outcome.
+pub(super) struct About<'a> {
+    /// Where the report is.
+    pub(super) folder: &'a Path,
+    /// Where the action levels came from.
+    pub(super) site: &'a SiteSource,
+    /// What the run was told to fail on.
+    pub(super) fail_on: FailOn,
+}
 
 /// Writes the summary of an audit.
 pub(super) fn write_summary(
     out: &mut dyn Write,
     outcome: &Outcome,
-    folder: &Path,
     exit: Exit,
-    fail_on: FailOn,
+    about: &About<'_>,
 ) -> io::Result<()> {
     let summary = &outcome.summary;
+    let fail_on = about.fail_on;
     for (what, counts) in [
         ("plans", &summary.plans),
         ("beams", &summary.beams),
@@ -41,10 +51,15 @@ pub(super) fn write_summary(
             summary.unapproved_models.join(", ")
         )?;
     }
+    let levels = about.site.file.as_ref().map_or_else(
+        || "built-in defaults, not this department's own (no site file)".to_owned(),
+        |file| file.display().to_string(),
+    );
+    writeln!(out, "levels    {levels}")?;
     writeln!(
         out,
         "report    {} (opens with what needs a person, worst first)",
-        folder.join("report.html").display()
+        about.folder.join("report.html").display()
     )?;
     writeln!(
         out,

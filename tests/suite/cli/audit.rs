@@ -196,8 +196,10 @@ fn verify_the_site_file_rules_and_is_named() {
     )
     .unwrap();
     assert_eq!(status(&place.audit(&[])), WITHIN);
+    assert!(stdout(&place.audit(&[])).contains("built-in defaults"));
     let output = place.audit(&["--site", site.to_str().unwrap()]);
     assert_eq!(status(&output), BEYOND);
+    assert!(stdout(&output).contains("site.toml"));
     assert_eq!(place.column("beams.csv", "verdict"), ["beyond-action"]);
     let page = fs::read_to_string(place.report().join("report.html")).unwrap();
     assert!(page.contains("site.toml") && page.contains("our own"));

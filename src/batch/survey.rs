@@ -65,6 +65,10 @@ fn look(path: &Path) -> Seen {
             FILE_CAP_BYTES / (1024 * 1024)
         ));
     }
+    if identified.may_be_plan {
+        let reason = identified.message.unwrap_or_default();
+        return Seen::Unreadable(format!("damaged before it says what it is: {reason}"));
+    }
     Seen::File {
         size_bytes: file.size_bytes,
         sha256: file.sha256,

@@ -10,10 +10,14 @@ fn obstacle(kind: ObstacleKind, message: String) -> Obstacle {
     Obstacle { kind, message }
 }
 
+/// So many reading notes are repeated at a beam. A faulty file has thousands,
+/// and each of its beams would repeat them all.
+const NOTES_REPEATED: usize = 20;
+
 /// Reading notes that stop this beam.
 pub(super) fn reading_obstacles(request: &BeamRequest<'_>) -> Vec<Obstacle> {
     let group_index = request.group.map(|(group, _)| group);
-    let mut found: Vec<Obstacle> = request
+    let mut stopping = request
         .plan
         .notes
         .iter()
@@ -23,7 +27,10 @@ pub(super) fn reading_obstacles(request: &BeamRequest<'_>) -> Vec<Obstacle> {
             (Effect::BlocksScope, NoteScope::Plan) => true,
             (Effect::BlocksScope, NoteScope::Beam(index)) => index == request.beam_index,
             (Effect::BlocksScope, NoteScope::FractionGroup(index)) => Some(index) == group_index,
-        })
+        });
+    let mut found: Vec<Obstacle> = stopping
+        .by_ref()
+        .take(NOTES_REPEATED)
         .map(|note| {
             obstacle(
                 ObstacleKind::Reading,
@@ -31,6 +38,13 @@ pub(super) fn reading_obstacles(request: &BeamRequest<'_>) -> Vec<Obstacle> {
             )
         })
         .collect();
+    let more = stopping.count();
+    if more > 0 {
+        found.push(obstacle(
+            ObstacleKind::Reading,
+            format!("{more} more reading notes stop this beam; `counterfoil read` lists them"),
+        ));
+    }
     if request.plan.beams.get(request.beam_index).is_none() {
         found.push(obstacle(
             ObstacleKind::Reading,

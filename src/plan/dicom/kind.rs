@@ -21,6 +21,8 @@ pub struct Identified {
     pub sop_instance_uid: Option<String>,
     /// Why it is not supported, or what is wrong with it, when there is something to say.
     pub message: Option<String>,
+    /// Whether the file is damaged before it says what it is, so that it may be a plan.
+    pub may_be_plan: bool,
 }
 
 /// Plan classes of vendors that are RT Plans in all but their UID. A class
@@ -91,8 +93,9 @@ pub fn identify(bytes: &[u8]) -> Identified {
         ),
         other => (other, reason),
     };
+    let may_be_plan = kind == FileKind::OtherDicom && sop_class_uid.is_none() && message.is_some();
     let message = match kind {
-        FileKind::NotDicom => None,
+        FileKind::NotDicom => packed(bytes).map(str::to_owned),
         _ => message.or_else(|| reason.map(str::to_owned)),
     };
     Identified {
@@ -100,6 +103,20 @@ pub fn identify(bytes: &[u8]) -> Identified {
         sop_class_uid,
         sop_instance_uid,
         message,
+        may_be_plan,
+    }
+}
+
+/// What may hide a plan from a look at the first bytes, in words.
+fn packed(bytes: &[u8]) -> Option<&'static str> {
+    const ARCHIVE: &str =
+        "a compressed file or archive: what it holds was not looked at, unpack it";
+    match bytes {
+        [] => Some("the file is empty"),
+        [0x1F, 0x8B, ..] | [b'P', b'K', 3, 4, ..] | [b'7', b'z', 0xBC, 0xAF, ..] => Some(ARCHIVE),
+        [b'B', b'Z', b'h', ..] | [0xFD, b'7', b'z', b'X', b'Z', ..] => Some(ARCHIVE),
+        [0x28, 0xB5, 0x2F, 0xFD, ..] => Some(ARCHIVE),
+        _ => None,
     }
 }
 

@@ -144,3 +144,20 @@ fn verify_the_users_depth_comes_first() {
             .any(|finding| finding.check == "depth-bases-disagree")
     );
 }
+
+/// A reference that stands 200 times stops its beam 200 times; its row names 20 and counts the others.
+#[test]
+fn verify_a_beam_does_not_repeat_every_note_of_a_faulty_file() {
+    let mut spec = reference_plan();
+    spec.groups[0].beams = vec![spec.groups[0].beams[0].clone(); 200];
+    let entry = audit(&spec);
+    assert_eq!(entry.verdict, Verdict::NotVerifiable);
+    let first = &entry.beams[0].reasons;
+    assert!(first.len() < 30, "{}", first.len());
+    assert!(
+        first
+            .iter()
+            .any(|reason| reason.contains("180 more reading notes stop this beam")),
+        "{first:?}"
+    );
+}

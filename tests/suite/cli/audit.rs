@@ -412,3 +412,33 @@ fn verify_a_depth_table_may_be_a_pipe() {
     place.audit(&["--depths", table.to_str().unwrap()]);
     assert_eq!(of_pipe, fingerprint(&json()));
 }
+
+/// A copy that ends before it says what it is may be a plan: the audit is incomplete, wherever the copy ends.
+#[test]
+fn verify_a_copy_cut_before_its_class_makes_the_audit_incomplete() {
+    let bytes = reference_plan("2.25.2").bytes();
+    for length in 132..400 {
+        let place = Place::new().with("a", &reference_plan("2.25.1"));
+        place.put("half", &bytes[..length]);
+        assert_eq!(status(&place.audit(&[])), INCOMPLETE, "{length} bytes");
+        assert_eq!(
+            place.column("files.csv", "outcome"),
+            ["audited", "unreadable"]
+        );
+    }
+}
+
+/// What is empty or packed is passed over with a word, since it may hide a plan.
+#[test]
+fn verify_empty_and_packed_files_are_named() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    place.put("b", b"");
+    place.put("c.gz", b"\x1F\x8B\x08\0\0\0\0\0");
+    place.put("d.zip", b"PK\x03\x04\x14\0\0\0");
+    place.put("e.txt", b"Please audit");
+    assert_eq!(status(&place.audit(&[])), WITHIN);
+    let messages = place.column("files.csv", "message");
+    assert!(messages[1].contains("empty"));
+    assert!(messages[2].contains("unpack") && messages[3].contains("unpack"));
+    assert_eq!(messages[4], "");
+}

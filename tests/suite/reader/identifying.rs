@@ -94,7 +94,9 @@ fn verify_other_files_are_not_dicom() {
     ] {
         let identified = identify(bytes);
         assert_eq!(identified.kind, FileKind::NotDicom);
-        assert_eq!(identified.message, None);
+        let said = bytes.is_empty().then(|| "the file is empty".to_owned());
+        assert_eq!(identified.message, said);
+        assert!(!identified.may_be_plan);
         assert_eq!(read_plan(bytes), Err(ReadError::NotDicom));
     }
 }

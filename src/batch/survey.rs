@@ -38,6 +38,10 @@ pub(super) fn survey(found: &Found) -> Surveyed {
             path: path.clone(),
             seen: Seen::PassedOver(reason.clone()),
         },
+        Found::ReportFolder(path) => Surveyed {
+            path: path.clone(),
+            seen: Seen::PassedOver("the folder that this run's report goes to".to_owned()),
+        },
         Found::Unreadable(path, reason) => Surveyed {
             path: path.clone(),
             seen: Seen::Unreadable(reason.clone()),

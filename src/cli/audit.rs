@@ -16,7 +16,7 @@ use super::summary::{About, write_summary};
 use crate::audit::ModelUse;
 use crate::batch::{self, BatchRequest, DepthTable, RunFacts, Tally, read_depth_table};
 use crate::beam_model::{ModelSet, ModelSeverity, check_machine};
-use crate::intake::{IntakeError, find_files, paths_from_list};
+use crate::intake::{Found, IntakeError, find_files, paths_from_list};
 use crate::report::{TargetState, target_state};
 
 /// Runs the main job.
@@ -32,7 +32,8 @@ pub(super) fn run(
     }
     let models = load(&effective.models_folder)?;
     refuse_faulty_models(&models)?;
-    refuse_foreign_folder(&arguments.out, arguments.force)?;
+    let target = target_state(&arguments.out)?;
+    refuse_foreign_folder(&arguments.out, &target, arguments.force)?;
     let depths = arguments
         .depths
         .as_deref()
@@ -40,6 +41,7 @@ pub(super) fn run(
         .transpose()?
         .unwrap_or_default();
     let found = find_files(&paths(&arguments)?, &arguments.out)?;
+    refuse_report_among_inputs(&target, &found)?;
     let facts = facts(&arguments, &effective, &depths)?;
     let bar = progress::bar(arguments.quiet);
     let outcome = batch::run(
@@ -113,13 +115,30 @@ fn refuse_faulty_models(models: &ModelSet) -> anyhow::Result<()> {
     Ok(())
 }
 
-fn refuse_foreign_folder(folder: &Path, force: bool) -> anyhow::Result<()> {
-    if let TargetState::Foreign { example } = target_state(folder)?
+fn refuse_foreign_folder(folder: &Path, target: &TargetState, force: bool) -> anyhow::Result<()> {
+    if let TargetState::Foreign { example } = target
         && !force
     {
         bail!(
             "{} holds something else than an earlier report ({example}); choose another folder with --out, or add --force",
             folder.display()
+        );
+    }
+    Ok(())
+}
+
+/// The report's own folder is not looked into. With other files in it, which
+/// may be plans, that must not go by silently.
+fn refuse_report_among_inputs(target: &TargetState, found: &[Found]) -> anyhow::Result<()> {
+    if let TargetState::Foreign { example } = target
+        && let Some(path) = found.iter().find_map(|one| match one {
+            Found::ReportFolder(path) => Some(path),
+            _ => None,
+        })
+    {
+        bail!(
+            "{} is among the folders to audit and is also where the report is to go: what else it holds ({example}) would not be looked at; choose another folder with --out",
+            path.display()
         );
     }
     Ok(())

@@ -17,6 +17,8 @@ pub enum Found {
     Unreadable(PathBuf, String),
     /// Something that was left alone on purpose: its path and why.
     PassedOver(PathBuf, String),
+    /// The folder that the report goes to, which was not looked into.
+    ReportFolder(PathBuf),
 }
 
 /// Why the inputs were refused.
@@ -83,8 +85,7 @@ fn walk(top: &Path, report_folder: Option<&Path>, found: &mut Vec<Found>) {
             let is_report = report_folder.is_some()
                 && fs::canonicalize(entry.path()).ok().as_deref() == report_folder;
             if is_report {
-                let reason = "the folder that this run's report goes to".to_owned();
-                found.push(Found::PassedOver(entry.into_path(), reason));
+                found.push(Found::ReportFolder(entry.into_path()));
                 entries.skip_current_dir();
             }
         } else if kind.is_file() {
@@ -120,7 +121,7 @@ mod tests {
             })
             .collect();
         assert_eq!(files, [inside(".hidden"), inside("a.dcm"), inside("b.dcm")]);
-        assert!(matches!(found.last(), Some(Found::PassedOver(path, _)) if *path == inside("out")));
+        assert_eq!(found.last(), Some(&Found::ReportFolder(inside("out"))));
     }
 
     #[test]

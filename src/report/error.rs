@@ -17,6 +17,12 @@ pub enum ReportError {
         /// Cause.
         source: std::io::Error,
     },
+    /// Another run writes its report into the folder at this moment.
+    #[error("report {}: another audit is writing there; wait for it, or choose another folder with --out", path.display())]
+    Busy {
+        /// The folder.
+        path: PathBuf,
+    },
     /// A table's row could not be written.
     #[error("report {}: a row cannot be written", path.display())]
     Csv {

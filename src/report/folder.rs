@@ -1,14 +1,15 @@
-//! The folder of a report: what stands there already, temporary files, and
-//! the order of renaming that makes `audit.json` the mark of a complete
-//! report. What the files hold is written elsewhere.
+//! The folder of a report while it is written: temporary files, one writer at
+//! a time, and the order of renaming that makes `audit.json` the mark of a
+//! complete report. What may be replaced is decided in `target`, what the files
+//! hold is written elsewhere.
 
-use std::fs;
-use std::io::{self, BufWriter, Read, Write};
+use std::fs::{self, File, TryLockError};
+use std::io::{self, BufWriter, Write};
 use std::path::{Path, PathBuf};
 
 use tempfile::{Builder, NamedTempFile};
 
-use super::{ReportError, SCHEMA_FAMILY};
+use super::ReportError;
 
 /// The record of everything; its presence marks a complete report.
 pub(super) const AUDIT_JSON: &str = "audit.json";
@@ -36,83 +37,7 @@ pub const REPORT_FILES: [&str; 6] = [
 const TEMPORARY_PREFIX: &str = ".counterfoil-";
 const TEMPORARY_SUFFIX: &str = ".tmp";
 
-/// What stands in a folder that a report is to be written to.
-#[derive(Clone, Debug, PartialEq, Eq)]
-pub enum TargetState {
-    /// There is no such folder.
-    Absent,
-    /// Nothing but, at most, temporary files that an interrupted audit left behind.
-    Empty,
-    /// A report of this program and nothing else: it may be replaced.
-    EarlierReport,
-    /// Something else: not to be written to unless the user insists.
-    Foreign {
-        /// Name of a file that is not ours (the first by name), or of the folder when it is no folder.
-        example: String,
-    },
-}
-
-/// What stands in `folder`. Only names are looked at, and the first bytes of `audit.json`.
-///
-/// # Errors
-/// When the folder cannot be listed or its `audit.json` cannot be read.
-pub fn target_state(folder: &Path) -> Result<TargetState, ReportError> {
-    let fault = |source| fault(folder, "read", source);
-    match fs::metadata(folder) {
-        Err(error) if error.kind() == io::ErrorKind::NotFound => return Ok(TargetState::Absent),
-        Err(error) => return Err(fault(error)),
-        Ok(metadata) if !metadata.is_dir() => {
-            return Ok(TargetState::Foreign {
-                example: folder.display().to_string(),
-            });
-        }
-        Ok(_) => {}
-    }
-    let mut names = Vec::new();
-    for item in fs::read_dir(folder).map_err(fault)? {
-        let item = item.map_err(fault)?;
-        let name = item.file_name().to_string_lossy().into_owned();
-        let plain_file = item.file_type().map_err(fault)?.is_file();
-        if !(plain_file && is_temporary(&name)) {
-            names.push((name, plain_file));
-        }
-    }
-    if names.is_empty() {
-        return Ok(TargetState::Empty);
-    }
-    names.sort();
-    let foreign = names
-        .iter()
-        .find(|(name, plain_file)| !plain_file || !REPORT_FILES.contains(&name.as_str()));
-    if let Some((name, _)) = foreign {
-        return Ok(TargetState::Foreign {
-            example: name.clone(),
-        });
-    }
-    if has_our_audit_json(folder)? {
-        return Ok(TargetState::EarlierReport);
-    }
-    // Our names without our mark: somebody else's table of the same name is not ours to replace.
-    let example = names.swap_remove(0).0;
-    Ok(TargetState::Foreign { example })
-}
-
-fn has_our_audit_json(folder: &Path) -> Result<bool, ReportError> {
-    let path = folder.join(AUDIT_JSON);
-    let file = match fs::File::open(&path) {
-        Err(error) if error.kind() == io::ErrorKind::NotFound => return Ok(false),
-        Err(error) => return Err(fault(&path, "read", error)),
-        Ok(file) => file,
-    };
-    let mark = format!("{{\"schema\":\"{SCHEMA_FAMILY}");
-    let mut start = Vec::new();
-    file.take(mark.len() as u64)
-        .read_to_end(&mut start)
-        .map_err(|error| fault(&path, "read", error))?;
-    Ok(start == mark.as_bytes())
-}
-
-fn is_temporary(name: &str) -> bool {
+pub(super) fn is_temporary(name: &str) -> bool {
     name.starts_with(TEMPORARY_PREFIX) && name.ends_with(TEMPORARY_SUFFIX)
 }
 
@@ -130,16 +55,25 @@ pub(super) fn fault(path: &Path, action: &'static str, source: io::Error) -> Rep
 pub(super) struct ReportFolder {
     path: PathBuf,
     remove_when_dropped: bool,
+    /// Held while this run writes; the system lets go of it however the run ends.
+    _lock: Option<File>,
 }
 
 impl ReportFolder {
     /// Opens the folder, creates it when absent (readable by its owner alone),
     /// and clears temporary files that an interrupted audit left behind.
     pub(super) fn open(path: &Path) -> Result<Self, ReportError> {
-        let created = !path.is_dir();
-        if created {
-            create_private(path).map_err(|error| fault(path, "created", error))?;
-        }
+        let created = if path.is_dir() {
+            false
+        } else {
+            match create_private(path) {
+                Ok(()) => true,
+                // Another run was a moment faster.
+                Err(_) if path.is_dir() => false,
+                Err(error) => return Err(fault(path, "created", error)),
+            }
+        };
+        let lock = lock(path)?;
         for item in fs::read_dir(path).map_err(|error| fault(path, "read", error))? {
             let item = item.map_err(|error| fault(path, "read", error))?;
             if is_temporary(&item.file_name().to_string_lossy()) {
@@ -151,6 +85,7 @@ impl ReportFolder {
         Ok(Self {
             path: path.to_path_buf(),
             remove_when_dropped: created,
+            _lock: lock,
         })
     }
 
@@ -180,6 +115,13 @@ impl ReportFolder {
         for file in files {
             ready.push(file.close()?);
         }
+        for (path, _) in &ready {
+            // Seen before anything is renamed, so that an earlier report stays whole.
+            if path.is_dir() {
+                let error = io::Error::from(io::ErrorKind::IsADirectory);
+                return Err(fault(path, "replaced", error));
+            }
+        }
         let mark = self.path.join(AUDIT_JSON);
         match fs::remove_file(&mark) {
             Err(error) if error.kind() != io::ErrorKind::NotFound => {
@@ -195,6 +137,21 @@ impl ReportFolder {
             written.push(path);
         }
         Ok(written)
+    }
+}
+
+/// Keeps a second run from clearing away this one's temporary files. The lock
+/// is on the folder itself; where a system has no such lock there is none.
+fn lock(path: &Path) -> Result<Option<File>, ReportError> {
+    let Ok(folder) = File::open(path) else {
+        return Ok(None);
+    };
+    match folder.try_lock() {
+        Ok(()) => Ok(Some(folder)),
+        Err(TryLockError::WouldBlock) => Err(ReportError::Busy {
+            path: path.to_path_buf(),
+        }),
+        Err(TryLockError::Error(_)) => Ok(None),
     }
 }
 

@@ -16,15 +16,17 @@ mod plain_text;
 mod plan_text;
 mod svg;
 mod table;
+mod target;
 mod writer;
 
 pub use error::ReportError;
 pub use field_text::trace_text;
-pub use folder::{REPORT_FILES, TargetState, target_state};
+pub use folder::REPORT_FILES;
 pub use model_page::model_page;
 pub use model_text::model_check_text;
 pub use plan_text::{ControlPointDetail, plan_text};
 pub use table::{ColumnMeaning, TableMeaning, data_dictionary, harmless, plain_decimal};
+pub use target::{TargetState, target_state};
 pub use writer::{ReportWriter, Written};
 
 /// Every version of the record that this program has written begins so.

@@ -442,3 +442,29 @@ fn verify_empty_and_packed_files_are_named() {
     assert!(messages[2].contains("unpack") && messages[3].contains("unpack"));
     assert_eq!(messages[4], "");
 }
+
+/// Plans in the folder that the report is forced into would be passed over: 0 would be wrong.
+#[test]
+fn verify_plans_in_the_report_folder_are_not_skipped_silently() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    let out = place.plans().join("monday");
+    fs::create_dir(&out).unwrap();
+    fs::write(
+        out.join("b"),
+        reference_plan("2.25.2").with_meterset(150.0).bytes(),
+    )
+    .unwrap();
+    let output = program()
+        .arg("audit")
+        .arg(place.plans())
+        .arg("--models")
+        .arg(test_models())
+        .arg("--force")
+        .arg("--out")
+        .arg(&out)
+        .output()
+        .unwrap();
+    assert_eq!(status(&output), FAILED, "{}", stdout(&output));
+    assert!(stderr(&output).contains("monday"), "{}", stderr(&output));
+    assert!(!out.join("audit.json").exists());
+}

@@ -119,6 +119,57 @@ fn verify_states_of_a_folder() {
     );
 }
 
+/// A run that is killed between two renamings leaves our files without the mark: the next one replaces them.
+#[test]
+fn verify_interrupted_renaming_does_not_bar_the_next_run() {
+    let folder = Folder::new();
+    let path = folder.path();
+    sample::write(&path, 2, &sample::plans());
+    fs::remove_file(path.join("audit.json")).unwrap();
+    fs::write(path.join(".counterfoil-Ab12.tmp"), "{\"schema\":").unwrap();
+    assert_eq!(target_state(&path).unwrap(), TargetState::EarlierReport);
+    fs::remove_file(path.join("plans.csv")).unwrap();
+    assert_eq!(target_state(&path).unwrap(), TargetState::EarlierReport);
+    for name in ["report.html", "beams.csv"] {
+        let ours = fs::read(path.join(name)).unwrap();
+        fs::write(path.join(name), "somebody's own").unwrap();
+        assert_eq!(
+            target_state(&path).unwrap(),
+            TargetState::Foreign {
+                example: name.to_owned()
+            }
+        );
+        fs::write(path.join(name), ours).unwrap();
+    }
+}
+
+/// A second run would clear away the temporary files of the first.
+#[cfg(unix)]
+#[test]
+fn verify_two_runs_do_not_write_into_one_folder() {
+    let folder = Folder::new();
+    let first = ReportWriter::create(&folder.path(), &sample::run(2)).unwrap();
+    let error = ReportWriter::create(&folder.path(), &sample::run(2)).unwrap_err();
+    assert!(error.to_string().contains("another audit"), "{error}");
+    first.finish(&sample::summary()).unwrap();
+    assert_eq!(names(&folder.path()).len(), 6);
+    assert!(ReportWriter::create(&folder.path(), &sample::run(2)).is_ok());
+}
+
+/// What is in the way is seen before the earlier report loses its mark.
+#[test]
+fn verify_a_folder_in_the_way_leaves_the_earlier_report() {
+    let folder = Folder::new();
+    let path = folder.path();
+    sample::write(&path, 2, &sample::plans());
+    fs::remove_file(path.join("plans.csv")).unwrap();
+    fs::create_dir(path.join("plans.csv")).unwrap();
+    let writer = ReportWriter::create(&path, &sample::run(2)).unwrap();
+    let error = writer.finish(&sample::summary()).unwrap_err().to_string();
+    assert!(error.contains("plans.csv"), "{error}");
+    assert_eq!(names(&path).len(), 6, "with its mark");
+}
+
 #[test]
 fn verify_a_failed_finish_leaves_no_temporary_file_and_no_mark() {
     let folder = Folder::new();

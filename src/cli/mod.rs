@@ -9,6 +9,7 @@ mod clock;
 mod exit;
 mod field;
 mod model;
+mod patient_out;
 mod progress;
 mod read;
 mod settings;
@@ -21,6 +22,7 @@ use clap::Parser;
 
 use args::{Arguments, Command};
 pub use exit::Exit;
+use patient_out::PatientOut;
 
 /// Runs the program on the process's own arguments and streams.
 #[must_use]
@@ -41,15 +43,20 @@ pub fn main() -> ExitCode {
 /// Runs one command. Results go to `out`, everything else to `err`.
 fn run(arguments: Arguments, out: &mut dyn Write, err: &mut dyn Write) -> Exit {
     let result = match arguments.command {
-        Command::Audit(audit) => audit::run(audit, out, err),
+        Command::Audit(audit) => audit::run(audit, &mut PatientOut::new(out), err),
         Command::Read(read) => read::run(read, out),
-        Command::Field(field) => field::run(*field, out),
-        Command::Model(model) => model::run(model, out),
+        Command::Field(field) => field::run(*field, &mut PatientOut::new(out)),
+        Command::Model(model) => model::run(model, &mut PatientOut::new(out)),
         Command::Checks => checks::run(out),
     };
+    // Standard output may hold back a line; whether it can be written shows only now.
+    let result = result.and_then(|exit| {
+        PatientOut::new(out).flush()?;
+        Ok(exit)
+    });
     result.unwrap_or_else(|error| {
         if is_broken_pipe(&error) {
-            // Whoever read our output has seen enough.
+            // Whoever read our output has seen enough; only commands without a judgement end so.
             return Exit::Within;
         }
         let causes: Vec<String> = error.chain().map(ToString::to_string).collect();

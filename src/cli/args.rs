@@ -49,7 +49,7 @@ pub(super) struct AuditArguments {
     /// Files and folders; `-` reads a list of paths from standard input, one a line
     #[arg(value_name = "PATH", required_unless_present_any = ["files_from", "show_settings"])]
     pub(super) paths: Vec<PathBuf>,
-    /// A list of paths, one a line
+    /// A list of paths, one a line; `-` is standard input
     #[arg(long, value_name = "FILE")]
     pub(super) files_from: Option<PathBuf>,
     #[command(flatten)]

@@ -84,7 +84,11 @@ fn paths(arguments: &AuditArguments) -> anyhow::Result<Vec<PathBuf>> {
             paths.push(path.clone());
         }
     }
-    if let Some(list) = &arguments.files_from {
+    if let Some(list) = &arguments.files_from
+        && list.as_os_str() == "-"
+    {
+        paths.extend(paths_from_list(io::stdin().lock(), "standard input")?);
+    } else if let Some(list) = &arguments.files_from {
         let name = list.display().to_string();
         let file = File::open(list).map_err(|source| IntakeError::List {
             list: name.clone(),

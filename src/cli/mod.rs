@@ -39,7 +39,10 @@ pub fn main() -> ExitCode {
     };
     let mut out = Pipe::new(io::stdout().lock());
     let mut err = Pipe::new(io::stderr());
-    ExitCode::from(run(arguments, &mut out, &mut err).status())
+    let exit = run(arguments, &mut out, &mut err);
+    // Standard output may hold back a line; nobody can be told any more when it cannot be written.
+    let _ = out.flush();
+    ExitCode::from(exit.status())
 }
 
 /// Runs one command. Results go to `out`, everything else to `err`.

@@ -292,29 +292,6 @@ fn verify_settings_in_force_are_shown_with_their_source() {
     assert!(stdout(&output).contains("edge_margin_cm = 1.0"));
 }
 
-/// Once, a summary that nobody read turned status 1 into 0.
-#[cfg(unix)]
-#[test]
-fn verify_a_closed_pipe_changes_no_status() {
-    use std::process::{Command, Stdio};
-    let place = Place::new().with("a", &reference_plan("2.25.1").with_meterset(120.0));
-    // `true` reads nothing and is gone before the summary comes.
-    let mut reader = Command::new("true").stdin(Stdio::piped()).spawn().unwrap();
-    let pipe = reader.stdin.take().unwrap();
-    reader.wait().unwrap();
-    let status = program()
-        .arg("audit")
-        .arg(place.plans())
-        .arg("--models")
-        .arg(test_models())
-        .arg("--out")
-        .arg(place.report())
-        .stdout(Stdio::from(pipe))
-        .status()
-        .unwrap();
-    assert_eq!(status.code(), Some(BEYOND));
-}
-
 /// A table for another folder is told in one line, not in thousands of rows.
 #[test]
 fn verify_a_long_table_that_fits_no_plan_is_told_briefly() {
@@ -467,4 +444,45 @@ fn verify_plans_in_the_report_folder_are_not_skipped_silently() {
     assert_eq!(status(&output), FAILED, "{}", stdout(&output));
     assert!(stderr(&output).contains("monday"), "{}", stderr(&output));
     assert!(!out.join("audit.json").exists());
+}
+
+/// `audit ... | head -1` must not turn a deviation into 0: the status is that of the audit, read to its end or not.
+#[test]
+fn verify_a_closed_pipe_does_not_change_the_status() {
+    let off = reference_plan("2.25.2").with_meterset(110.0);
+    let place = Place::new().with("b", &off);
+    let (reader, writer) = std::io::pipe().unwrap();
+    drop(reader);
+    let ended = program()
+        .arg("audit")
+        .arg(place.plans())
+        .arg("--models")
+        .arg(test_models())
+        .arg("--out")
+        .arg(place.report())
+        .stdout(writer)
+        .output()
+        .unwrap();
+    assert_eq!(status(&ended), BEYOND);
+    assert_eq!(stderr(&ended), "");
+    assert!(place.report().join("audit.json").exists());
+}
+
+/// `--files-from -` is standard input, as for other programs.
+#[test]
+fn verify_a_list_of_paths_may_come_from_standard_input() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    let (reader, mut writer) = std::io::pipe().unwrap();
+    let list = format!("{}\n", place.plans().join("a").display());
+    std::io::Write::write_all(&mut writer, list.as_bytes()).unwrap();
+    drop(writer);
+    let output = program()
+        .args(["audit", "--files-from", "-", "--models"])
+        .arg(test_models())
+        .arg("--out")
+        .arg(place.report())
+        .stdin(reader)
+        .output()
+        .unwrap();
+    assert_eq!(status(&output), WITHIN, "{}", stderr(&output));
 }

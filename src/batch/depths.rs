@@ -1,7 +1,8 @@
 //! The user's depth table: one row a beam, from CSV.
 
 use std::collections::HashSet;
-use std::fs;
+use std::fs::File;
+use std::io::{self, Read};
 use std::path::Path;
 
 use serde::Deserialize;
@@ -9,6 +10,9 @@ use thiserror::Error;
 
 use crate::dose::DepthRow;
 use crate::quantity::{Quantity, sha256_hex};
+
+/// Largest table that is read: more than half a million rows.
+const FILE_LIMIT_BYTES: u64 = 64 * 1024 * 1024;
 
 /// Why a depth table was refused.
 #[derive(Debug, Error)]
@@ -62,7 +66,7 @@ pub struct DepthTable {
 pub fn read_depth_table(path: &Path) -> Result<DepthTable, DepthTableError> {
     let file = path.display().to_string();
     // Once: a pipe gives its bytes only once, and a file may change between two readings.
-    let bytes = fs::read(path).map_err(|source| DepthTableError::Unreadable {
+    let bytes = read_bounded(path).map_err(|source| DepthTableError::Unreadable {
         file: file.clone(),
         source,
     })?;
@@ -109,6 +113,19 @@ pub fn read_depth_table(path: &Path) -> Result<DepthTable, DepthTableError> {
         }
         rows.push(row);
     }
+}
+
+fn read_bounded(path: &Path) -> io::Result<Vec<u8>> {
+    let mut bytes = Vec::new();
+    File::open(path)?
+        .take(FILE_LIMIT_BYTES + 1)
+        .read_to_end(&mut bytes)?;
+    if bytes.len() as u64 > FILE_LIMIT_BYTES {
+        return Err(io::Error::other(format!(
+            "larger than {FILE_LIMIT_BYTES} bytes; give a table for the plans of this run"
+        )));
+    }
+    Ok(bytes)
 }
 
 fn check(raw: RawRow) -> Result<DepthRow, String> {

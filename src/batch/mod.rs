@@ -7,6 +7,8 @@ mod depth_rows;
 mod depths;
 mod fate;
 mod guard;
+mod one_file;
+mod record;
 mod run;
 mod summary;
 mod survey;

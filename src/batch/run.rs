@@ -11,17 +11,15 @@ use thiserror::Error;
 
 use super::depth_rows::{RowsByPlan, UnusedRows};
 use super::fate::{Fate, fates};
-use super::guard::guarded;
+use super::one_file::one_file;
+use super::record::{model_uses, run_id, run_record};
 use super::summary::Tally;
 use super::survey::{Seen, Surveyed, survey};
-use crate::audit::{
-    FileEntry, FileOutcome, ModelUse, PlanEntry, PlanInput, Rivals, Run, RunSummary, audit_plan,
-};
-use crate::beam_model::{DataOrigin, ModelSet};
+use crate::audit::{FileEntry, ModelUse, PlanEntry, RunSummary};
+use crate::beam_model::ModelSet;
 use crate::dose::DepthRow;
-use crate::intake::{Contents, Found, read_file};
-use crate::plan::{FileKind, read_plan};
-use crate::quantity::sha256_hex;
+use crate::intake::Found;
+use crate::plan::FileKind;
 use crate::report::{ReportError, ReportWriter, Written};
 use crate::settings::{Site, SiteSource};
 
@@ -242,107 +240,6 @@ fn may_be_plan(file: &Surveyed) -> bool {
     }
 }
 
-fn one_file(
-    request: BatchRequest<'_>,
-    rows: &RowsByPlan,
-    files: &[Surveyed],
-    index: usize,
-    fate: &Fate,
-) -> (FileEntry, Option<PlanEntry>) {
-    let file = &files[index];
-    let name = file.path.display().to_string();
-    let entry = |outcome: FileOutcome, message: String| {
-        let (size_bytes, sha256, kind) = match &file.seen {
-            Seen::File {
-                size_bytes,
-                sha256,
-                kind,
-                ..
-            } => (Some(*size_bytes), Some(sha256.clone()), Some(kind.term())),
-            Seen::PassedOver(_) | Seen::Unreadable(_) => (None, None, None),
-        };
-        FileEntry {
-            file: name.clone(),
-            size_bytes,
-            sha256,
-            kind,
-            outcome,
-            message,
-        }
-    };
-    let (kind, sha256, message) = match &file.seen {
-        Seen::PassedOver(reason) => return (entry(FileOutcome::PassedOver, reason.clone()), None),
-        Seen::Unreadable(reason) => return (entry(FileOutcome::Unreadable, reason.clone()), None),
-        Seen::File {
-            kind,
-            sha256,
-            message,
-            ..
-        } => (*kind, sha256, message.clone().unwrap_or_default()),
-    };
-    match fate {
-        Fate::Leave => (entry(outcome_of(kind), message), None),
-        Fate::DuplicateOf(original) => {
-            let original = files[*original].path.display().to_string();
-            let message = "the same plan and the same bytes, audited once".to_owned();
-            (entry(FileOutcome::DuplicateOf(original), message), None)
-        }
-        Fate::Audit { rivals } => match audit_file(request, rows, &file.path, sha256, rivals) {
-            Ok(plan) => (entry(FileOutcome::Audited, message), Some(plan)),
-            Err(reason) => (entry(FileOutcome::Unreadable, reason), None),
-        },
-    }
-}
-
-const fn outcome_of(kind: FileKind) -> FileOutcome {
-    match kind {
-        FileKind::BrachyPlan => FileOutcome::NotApplicable,
-        FileKind::IonPlan => FileOutcome::NotSupported,
-        _ => FileOutcome::PassedOver,
-    }
-}
-
-fn audit_file(
-    request: BatchRequest<'_>,
-    rows: &RowsByPlan,
-    path: &Path,
-    sha256: &str,
-    rivals: &Rivals,
-) -> Result<PlanEntry, String> {
-    let file = read_file(path).map_err(|error| error.to_string())?;
-    let Contents::Whole(bytes) = &file.contents else {
-        return Err("grew while it was being read".to_owned());
-    };
-    if file.sha256 != sha256 {
-        return Err("changed while it was being read; run the audit again".to_owned());
-    }
-    guarded(|| {
-        let plan = read_plan(bytes).map_err(|error| chain(&error))?;
-        let uid = plan.identity.sop_instance_uid.value();
-        Ok(audit_plan(PlanInput {
-            file: &path.display().to_string(),
-            sha256,
-            plan: &plan,
-            rivals,
-            models: request.models,
-            site: request.site,
-            depth_rows: rows.of(uid.map(String::as_str)),
-        }))
-    })?
-}
-
-/// An error with its causes on one line.
-fn chain(error: &dyn std::error::Error) -> String {
-    let mut text = error.to_string();
-    let mut cause = error.source();
-    while let Some(inner) = cause {
-        text.push_str(": ");
-        text.push_str(&inner.to_string());
-        cause = inner.source();
-    }
-    text
-}
-
 fn models_of(plan: &PlanEntry, models: &ModelSet) -> Vec<String> {
     let names: BTreeSet<String> = plan
         .beams
@@ -352,66 +249,6 @@ fn models_of(plan: &PlanEntry, models: &ModelSet) -> Vec<String> {
         .map(|model| model.name.clone())
         .collect();
     names.into_iter().collect()
-}
-
-fn model_uses(models: &ModelSet, day: jiff::civil::Date) -> Vec<ModelUse> {
-    models
-        .machines
-        .iter()
-        .map(|model| {
-            let provenance = &model.provenance;
-            ModelUse {
-                name: model.name.clone(),
-                serves: model.serves.clone(),
-                fingerprint: model.fingerprint.clone(),
-                origin: match provenance.origin {
-                    DataOrigin::Measured => "measured",
-                    DataOrigin::Published => "published",
-                    DataOrigin::Invented => "invented",
-                },
-                provenance: format!("{}, {}", provenance.by, provenance.on),
-                approval: model.approval.as_ref().map_or_else(
-                    || "not approved".to_owned(),
-                    |approval| {
-                        format!(
-                            "by {} on {}, until {}",
-                            approval.by, approval.on, approval.until
-                        )
-                    },
-                ),
-                approved: model.is_approved_on(day),
-            }
-        })
-        .collect()
-}
-
-fn run_record(request: BatchRequest<'_>, models: &[ModelUse]) -> Run {
-    let facts = request.facts;
-    Run {
-        run_id: String::new(),
-        version: facts.version.clone(),
-        started: facts.started.to_string(),
-        inputs: facts.inputs.clone(),
-        options: facts.options.clone(),
-        site_source: facts.site_source.clone(),
-        site: request.site.clone(),
-        models: models.to_vec(),
-    }
-}
-
-/// Sixteen hex digits over everything that the outputs depend on.
-fn run_id(run: &Run, files: &[Surveyed]) -> String {
-    let mut text = format!("{run:?}");
-    for file in files {
-        let fingerprint = match &file.seen {
-            Seen::File { sha256, .. } => sha256,
-            Seen::PassedOver(reason) | Seen::Unreadable(reason) => reason,
-        };
-        text.push_str(&format!("\n{} {fingerprint}", file.path.display()));
-    }
-    let mut id = sha256_hex(text.as_bytes());
-    id.truncate(16);
-    id
 }
 
 #[cfg(test)]

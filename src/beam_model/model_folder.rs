@@ -108,11 +108,11 @@ fn read_bounded(path: &Path) -> Result<Vec<u8>, ModelError> {
         path: path.to_path_buf(),
         source,
     };
-    let file = File::open(path).map_err(failed)?;
-    // A device or pipe could deliver without end, or never.
-    if !file.metadata().map_err(failed)?.is_file() {
+    // A device could deliver without end, and a pipe waits for its writer as soon as it is opened.
+    if !std::fs::metadata(path).map_err(failed)?.is_file() {
         return Err(failed(std::io::Error::other("not a regular file")));
     }
+    let file = File::open(path).map_err(failed)?;
     let mut bytes = Vec::new();
     file.take(FILE_LIMIT_BYTES + 1)
         .read_to_end(&mut bytes)

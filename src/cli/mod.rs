@@ -56,7 +56,28 @@ fn run(arguments: Arguments, out: &mut dyn Write, err: &mut dyn Write) -> Exit {
     };
     result.unwrap_or_else(|error| {
         let causes: Vec<String> = error.chain().map(ToString::to_string).collect();
-        let _ = writeln!(err, "counterfoil: {}", causes.join(": "));
+        let _ = writeln!(err, "counterfoil: {}", for_terminal(&causes.join(": ")));
         Exit::Failed
     })
+}
+
+/// So much of a message is shown; one may quote a cell of megabytes.
+const MESSAGE_CHARACTERS: usize = 2_000;
+
+/// A text for the terminal: what a file name or a file's content brings along
+/// must not steer it.
+fn for_terminal(text: &str) -> String {
+    let mut shown = String::new();
+    for (count, c) in text.chars().enumerate() {
+        if count == MESSAGE_CHARACTERS {
+            shown.push_str("...");
+            break;
+        }
+        if c.is_control() && c != '\n' {
+            shown.extend(c.escape_default());
+        } else {
+            shown.push(c);
+        }
+    }
+    shown
 }

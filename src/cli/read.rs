@@ -6,6 +6,7 @@ use anyhow::{Context, bail};
 
 use super::args::ReadArguments;
 use super::exit::Exit;
+use super::for_terminal;
 use crate::intake::{Contents, read_file};
 use crate::plan::{Plan, read_plan};
 use crate::report::{ControlPointDetail, plan_text};
@@ -31,7 +32,7 @@ pub(super) fn run(arguments: ReadArguments, out: &mut dyn Write) -> anyhow::Resu
             serde_json::to_writer_pretty(&mut *out, &plan)?;
             writeln!(out)?;
         } else {
-            writeln!(out, "{name}")?;
+            writeln!(out, "{}", for_terminal(&name))?;
             write!(out, "{}", plan_text(&plan, detail))?;
         }
     }

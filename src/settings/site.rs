@@ -2,13 +2,17 @@
 //! belongs to which group of action levels is decided in `audit`.
 
 use std::collections::BTreeMap;
-use std::fs;
+use std::fs::File;
+use std::io::{self, Read};
 use std::path::{Path, PathBuf};
 
 use serde::{Deserialize, Serialize};
 use thiserror::Error;
 
 use crate::quantity::sha256_hex;
+
+/// Largest site file that is read.
+const FILE_LIMIT_BYTES: u64 = 1024 * 1024;
 
 /// Everything a department may set. `Site::default()` is what holds without a site file.
 #[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
@@ -246,6 +250,20 @@ pub enum SettingsError {
     },
 }
 
+/// The text of a file of no more than [`FILE_LIMIT_BYTES`].
+fn read_bounded(path: &Path) -> io::Result<String> {
+    let mut text = String::new();
+    File::open(path)?
+        .take(FILE_LIMIT_BYTES + 1)
+        .read_to_string(&mut text)?;
+    if text.len() as u64 > FILE_LIMIT_BYTES {
+        return Err(io::Error::other(format!(
+            "larger than {FILE_LIMIT_BYTES} bytes, which no site file is"
+        )));
+    }
+    Ok(text)
+}
+
 impl Site {
     /// The settings of a site file, keys that it does not name at their defaults.
     ///
@@ -253,7 +271,7 @@ impl Site {
     /// When the file cannot be read, has an unknown key, or a value makes no sense.
     pub fn load(path: &Path) -> Result<(Self, SiteSource), SettingsError> {
         let file = path.display().to_string();
-        let text = fs::read_to_string(path).map_err(|source| SettingsError::Unreadable {
+        let text = read_bounded(path).map_err(|source| SettingsError::Unreadable {
             file: file.clone(),
             source,
         })?;

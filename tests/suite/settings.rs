@@ -46,3 +46,12 @@ fn verify_levels_that_could_let_anything_pass_are_refused() {
         assert!(error.contains("action_levels.static"), "{error}");
     }
 }
+
+/// A device delivers without end; a file of this size holds no rules.
+#[cfg(unix)]
+#[test]
+fn verify_a_site_file_without_end_is_refused() {
+    let error = Site::load(std::path::Path::new("/dev/zero")).unwrap_err();
+    let cause = std::error::Error::source(&error).unwrap().to_string();
+    assert!(cause.contains("larger than"), "{cause}");
+}

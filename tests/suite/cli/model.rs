@@ -92,3 +92,32 @@ fn verify_show_writes_one_page() {
     assert!(text.contains("<svg") && text.contains("tg71-tpr"));
     assert!(!text.contains("http://") && !text.contains("https://"));
 }
+
+/// A pipe in a model would keep the run waiting for a writer that never comes.
+#[cfg(unix)]
+#[test]
+fn verify_a_pipe_in_a_model_is_refused_at_once() {
+    let folder = tempfile::tempdir().unwrap();
+    let model = folder.path().join("model");
+    fs::create_dir_all(model.join("6")).unwrap();
+    for file in ["machine.toml", "6/output.csv", "6/off-axis.csv"] {
+        fs::copy(test_models().join("tg71-tpr").join(file), model.join(file)).unwrap();
+    }
+    let pipe = model.join("6/tpr.csv");
+    let made = std::process::Command::new("mkfifo")
+        .arg(&pipe)
+        .status()
+        .unwrap();
+    assert!(made.success());
+    let output = program()
+        .args(["model", "check"])
+        .arg(&model)
+        .output()
+        .unwrap();
+    assert_eq!(status(&output), 2);
+    assert!(
+        stderr(&output).contains("not a regular file"),
+        "{}",
+        stderr(&output)
+    );
+}

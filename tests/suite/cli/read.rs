@@ -38,3 +38,21 @@ fn verify_read_refuses_what_is_no_plan() {
     assert_eq!(status(&output), 2);
     assert!(stderr(&output).contains('a'));
 }
+
+/// A file name must not steer the terminal, whether the file is read or refused.
+#[cfg(unix)]
+#[test]
+fn verify_a_file_name_does_not_write_on_the_terminal() {
+    let place = Place::new().with("a\u{1b}[2Jb", &reference_plan("2.25.1"));
+    place.put("c\u{1b}[2Jd", b"no plan");
+    for (name, ends) in [("a\u{1b}[2Jb", 0), ("c\u{1b}[2Jd", 2)] {
+        let output = program()
+            .arg("read")
+            .arg(place.plans().join(name))
+            .output()
+            .unwrap();
+        assert_eq!(status(&output), ends);
+        assert!(!stdout(&output).contains('\u{1b}'));
+        assert!(!stderr(&output).contains('\u{1b}'));
+    }
+}

@@ -14,6 +14,15 @@ use crate::quantity::{Quantity, sha256_hex};
 /// Largest table that is read: more than half a million rows.
 const FILE_LIMIT_BYTES: u64 = 64 * 1024 * 1024;
 
+const COLUMNS: [&str; 6] = [
+    "sop_instance_uid",
+    "beam_number",
+    "depth_cm",
+    "effective_depth_cm",
+    "ssd_cm",
+    "independent",
+];
+
 /// Why a depth table was refused.
 #[derive(Debug, Error)]
 pub enum DepthTableError {
@@ -74,7 +83,16 @@ pub fn read_depth_table(path: &Path) -> Result<DepthTable, DepthTableError> {
         .trim(csv::Trim::All)
         .comment(Some(b'#'))
         .from_reader(bytes.as_slice());
-    let headers = table.headers().cloned();
+    let header_fault = |message: String| DepthTableError::Row {
+        file: file.clone(),
+        line: 1,
+        message,
+    };
+    let header = table
+        .headers()
+        .map_err(|error| header_fault(error.to_string()))?
+        .clone();
+    check_header(&header).map_err(header_fault)?;
     let mut rows = Vec::new();
     let mut seen = HashSet::new();
     let mut record = csv::StringRecord::new();
@@ -95,11 +113,8 @@ pub fn read_depth_table(path: &Path) -> Result<DepthTable, DepthTableError> {
             });
         }
         let line = record.position().map_or(0, csv::Position::line);
-        let header = headers
-            .as_ref()
-            .map_err(|error| refuse(1, error.to_string()))?;
         let raw: RawRow = record
-            .deserialize(Some(header))
+            .deserialize(Some(&header))
             .map_err(|error| refuse(line, error.to_string()))?;
         let row = check(raw).map_err(|message| refuse(line, message))?;
         if !seen.insert((row.sop_instance_uid.clone(), row.beam_number)) {
@@ -112,6 +127,20 @@ pub fn read_depth_table(path: &Path) -> Result<DepthTable, DepthTableError> {
             ));
         }
         rows.push(row);
+    }
+}
+
+/// Without a header the first row would be taken for one, and its depths lost.
+fn check_header(header: &csv::StringRecord) -> Result<(), String> {
+    match COLUMNS
+        .iter()
+        .find(|&&column| !header.iter().any(|name| name == column))
+    {
+        None => Ok(()),
+        Some(missing) => Err(format!(
+            "the header has no column {missing}; it must name {}, separated by commas",
+            COLUMNS.join(", ")
+        )),
     }
 }
 

@@ -486,3 +486,20 @@ fn verify_a_list_of_paths_may_come_from_standard_input() {
         .unwrap();
     assert_eq!(status(&output), WITHIN, "{}", stderr(&output));
 }
+
+/// Without its header a table of one row would be read as a table of none, and its depth go unused.
+#[test]
+fn verify_a_depth_table_without_its_header_is_refused() {
+    let place = Place::new().with("a", &reference_plan("2.25.1"));
+    let table = place.folder.path().join("depths.csv");
+    for text in [
+        "",
+        "2.25.1,1,10,,90,yes\n",
+        "sop_instance_uid;beam_number;depth_cm;effective_depth_cm;ssd_cm;independent\n",
+    ] {
+        fs::write(&table, text).unwrap();
+        let output = place.audit(&["--depths", table.to_str().unwrap()]);
+        assert_eq!(status(&output), FAILED, "{text}");
+        assert!(stderr(&output).contains("header"), "{}", stderr(&output));
+    }
+}

@@ -3,6 +3,8 @@
 //! verification. An outcome with an obstacle may still carry a number; it is
 //! shown, and never judged as within.
 
+use std::sync::Arc;
+
 use serde::Serialize;
 
 use super::Trace;
@@ -269,8 +271,8 @@ pub struct BeamView {
 /// A block's outline.
 #[derive(Clone, Debug, PartialEq, Serialize)]
 pub struct BlockOutline {
-    /// Points [x, y].
-    pub outline_cm: Vec<[f64; 2]>,
+    /// Points [x, y], shared by every entry of the beam.
+    pub outline_cm: Arc<[[f64; 2]]>,
     /// Shields inside (else it is an aperture).
     pub shields_inside: bool,
 }

@@ -2,6 +2,8 @@
 //! accessories, bolus. Factors in the file are the planning system's word and
 //! are only ever compared, never used.
 
+use std::sync::Arc;
+
 use serde::Serialize;
 
 use crate::quantity::Given;
@@ -86,7 +88,7 @@ pub struct Block {
     /// Source to Block Tray Distance (300A,00F6), cm.
     pub source_to_tray_cm: Given<f64>,
     /// Block Data (300A,0106): outline points [x, y], cm at the isocentre plane in the collimator system.
-    pub outline_cm: Given<Vec<[f64; 2]>>,
+    pub outline_cm: Given<Arc<[[f64; 2]]>>,
 }
 
 /// One item of Compensator Sequence (300A,00E3).

@@ -27,7 +27,7 @@ const MAX_REFERRED_BEAMS: usize = 2_000;
 /// Control points and point depths of all of those.
 const MAX_REFERRED_POINTS: usize = 100_000;
 /// Leaf positions and coordinates of outlines of all of those, inherited ones too.
-const MAX_REFERRED_POSITIONS: usize = 10_000_000;
+const MAX_REFERRED_POSITIONS: usize = 5_000_000;
 
 /// Refuses a data set with more of something than any plan has.
 pub(super) fn check_limits(set: &DataSet<'_>) -> Result<(), ReadError> {

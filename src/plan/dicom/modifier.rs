@@ -1,5 +1,7 @@
 //! Wedges, blocks, compensators, applicators, accessories and bolus of a beam.
 
+use std::sync::Arc;
+
 use dicom_dictionary_std::tags;
 
 use super::node::{Node, length, plain, quantity};
@@ -113,7 +115,7 @@ fn read_divergence(item: &Node<'_, '_>, notes: &mut Notes) -> Given<bool> {
 }
 
 /// The outline, pairs of x and y.
-fn read_outline(item: &Node<'_, '_>, notes: &mut Notes) -> Given<Vec<[f64; 2]>> {
+fn read_outline(item: &Node<'_, '_>, notes: &mut Notes) -> Given<Arc<[[f64; 2]]>> {
     let tag = tags::BLOCK_DATA;
     let wanted = length(Quantity::DevicePosition, Effect::BlocksScope);
     let mut values = Vec::new();
@@ -129,7 +131,7 @@ fn read_outline(item: &Node<'_, '_>, notes: &mut Notes) -> Given<Vec<[f64; 2]>> 
         );
         return Given::Absent;
     }
-    let outline = reading.map(|()| points.to_vec()).given();
+    let outline = reading.map(|()| Arc::from(points)).given();
     if !outline.is_absent() {
         item.check_count(
             tags::BLOCK_NUMBER_OF_POINTS,

@@ -71,7 +71,7 @@ pub(super) fn picture(view: &BeamView, id: &str) -> Option<Picture> {
 fn half_width_cm(view: &BeamView) -> f64 {
     let jaws = [view.jaws_x_cm, view.jaws_y_cm];
     let jaws = jaws.into_iter().flatten().flatten();
-    let blocks = view.blocks.iter().flat_map(|block| &block.outline_cm);
+    let blocks = view.blocks.iter().flat_map(|block| block.outline_cm.iter());
     let leaves = view.leaf_banks.iter().flatten();
     let extent_cm = jaws
         .chain(view.point_cm.into_iter().flatten())

@@ -115,8 +115,8 @@ fn block_lines(lines: &mut Lines, block: &Block) {
     lines.given("outline", &block.outline_cm, |outline| {
         format!("{} points, cm at the isocentre plane:", outline.len())
     });
-    let points = block.outline_cm.value().map(Vec::as_slice);
-    for row in points.unwrap_or_default().chunks(6) {
+    let points = block.outline_cm.value().map(AsRef::as_ref);
+    for row in points.unwrap_or(&[]).chunks(6) {
         let row: Vec<String> = row
             .iter()
             .map(|[x, y]| format!("({}, {})", trimmed(*x, 4), trimmed(*y, 4)))

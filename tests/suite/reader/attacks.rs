@@ -296,7 +296,7 @@ fn verify_counts_beyond_any_plan_are_refused() {
 }
 
 /// What references times beams that bear the same number would come to: rows,
-/// control points (30 x 40 x 100), point depths (2 x 40 x 2,000), coordinates of outlines (600 x 20,000).
+/// control points (30 x 40 x 100), point depths (2 x 40 x 2,000), coordinates of outlines (300 x 20,000).
 #[test]
 fn verify_references_that_multiply_beams_are_refused() {
     let plan = |spec: PlanSpec, references: usize, beams: usize| {
@@ -320,12 +320,12 @@ fn verify_references_that_multiply_beams_are_refused() {
 
     assert!(plan(arc(2), 40, 40).is_ok());
     assert!(plan(depths.clone(), 1, 40).is_ok());
-    assert!(plan(outline.clone(), 400, 1).is_ok());
+    assert!(plan(outline.clone(), 200, 1).is_ok());
     for (spec, references, beams) in [
         (arc(2), 60, 40),
         (arc(100), 30, 40),
         (depths, 2, 40),
-        (outline, 600, 1),
+        (outline, 300, 1),
     ] {
         let error = plan(spec, references, beams).expect_err("too many");
         assert!(matches!(error, ReadError::TooManyParts { .. }), "{error}");

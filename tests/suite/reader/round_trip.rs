@@ -104,7 +104,7 @@ fn verify_every_attribute_comes_back() {
     assert_eq!(block.source_to_tray_cm, stated(65.4));
     assert_eq!(
         block.outline_cm,
-        stated(vec![[2.0, 2.0], [4.0, 2.0], [4.0, 4.0], [2.0, 4.0]])
+        stated([[2.0, 2.0], [4.0, 2.0], [4.0, 4.0], [2.0, 4.0]].into())
     );
     assert_eq!(beam.total_block_tray_factor, stated(0.97));
     assert_eq!(beam.boluses[0].roi_number, stated(12));

@@ -338,7 +338,7 @@ pub(crate) fn shaped_beam(number: i32) -> BeamEntry {
             .collect(),
     ];
     entry.calculation.view.blocks = vec![BlockOutline {
-        outline_cm: vec![[-4.0, 2.0], [-1.5, 2.5], [-1.0, 5.5], [-4.5, 6.0]],
+        outline_cm: [[-4.0, 2.0], [-1.5, 2.5], [-1.0, 5.5], [-4.5, 6.0]].into(),
         shields_inside: true,
     }];
     entry.independent_dose_gy = None;

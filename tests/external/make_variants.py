@@ -42,8 +42,6 @@ class Variant:
     name: str
     path: Path
     blocking: frozenset = field(default_factory=frozenset)
-    # Whether its text changes character sets by escape sequences that the program shows lossily.
-    lossy_text: bool = False
 
 
 def item(**attributes):
@@ -810,10 +808,6 @@ CHARACTER_SETS = [
     (["ISO 2022 IR 100", "ISO 2022 IR 144"], "M\u00fcller^\u041b\u044e\u043a"),
 ]
 
-# A known limit of the program: escape sequences to a second 8-bit set are not followed, so such text (which is
-# for showing only) comes out with its ASCII letters right and the others replaced.
-LOSSY_CHARACTER_SETS = [" and ISO 2022 IR 149", "ISO 2022 IR 100 and ISO 2022 IR 144"]
-
 
 def character_set(terms, name):
     ds = plan_of("text", [simple_beam(1)])
@@ -844,10 +838,10 @@ def variants(folder, base):
     folder.mkdir(parents=True, exist_ok=True)
     out = []
 
-    def put(name, writer, ds, *arguments, blocking=(), lossy_text=False):
+    def put(name, writer, ds, *arguments, blocking=()):
         path = folder / (name.replace(" ", "-") + ".dcm")
         writer(path, ds, *arguments)
-        out.append(Variant(name, path, frozenset(blocking), lossy_text))
+        out.append(Variant(name, path, frozenset(blocking)))
 
     full = everything()
     sources = {"rtplan": pydicom.dcmread(base), "everything": full, "wedged": wedged()}
@@ -894,8 +888,7 @@ def variants(folder, base):
     put("machine QA", write, machine_quality_plan())
     for index, (terms, name) in enumerate(CHARACTER_SETS):
         label = terms if isinstance(terms, str) else " and ".join(terms)
-        lossy = label in LOSSY_CHARACTER_SETS
-        put(f"text {index} {label}", write, character_set(terms, name), lossy_text=lossy)
+        put(f"text {index} {label}", write, character_set(terms, name))
     put("text undeclared", write, undeclared(None))
     put("text declared ASCII", write, undeclared("ISO_IR 6"))
     return out

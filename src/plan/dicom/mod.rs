@@ -9,6 +9,7 @@ mod complete;
 mod control_point;
 mod device;
 mod error;
+mod escape;
 mod file_kind;
 mod fraction;
 mod framing;

@@ -3,6 +3,7 @@
 //! left to the files named after the parts of a plan.
 
 use dicom_core::{Tag, VR};
+use dicom_dictionary_std::tags;
 
 use super::name::{named, push_step};
 use super::notes::Notes;
@@ -234,9 +235,29 @@ impl<'n, 'a> Node<'n, 'a> {
             );
             return Reading::Unusable;
         }
-        match self.charset.decode(element.vr, bytes) {
+        let own = if bytes.is_ascii() && !bytes.contains(&0x1B) {
+            None
+        } else {
+            self.own_charset()
+        };
+        let charset = own.as_ref().unwrap_or(self.charset);
+        match charset.decode(element.vr, bytes) {
             text if text.is_empty() => Reading::Nothing,
             text => Reading::Value(text),
+        }
+    }
+
+    /// The character set that this item, or the nearest item around it, states for itself (PS3.3, C.12.1.1.2).
+    fn own_charset(&self) -> Option<Charset> {
+        // The outermost data set's is known.
+        let (parent, ..) = self.up?;
+        match self
+            .set
+            .first(tags::SPECIFIC_CHARACTER_SET)
+            .map(|element| &element.value)
+        {
+            Some(Value::Bytes(value)) => Some(Charset::from_value(value)),
+            _ => parent.own_charset(),
         }
     }
 

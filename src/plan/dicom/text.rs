@@ -5,13 +5,20 @@
 use dicom_core::VR;
 use dicom_encoding::text::{SpecificCharacterSet, TextCodec};
 
+use super::escape::decode_escaped;
+
 /// The character set of a data set.
 #[derive(Debug)]
-pub(super) struct Charset(Option<SpecificCharacterSet>);
+pub(super) struct Charset {
+    first: Option<SpecificCharacterSet>,
+    /// Whether escape sequences may lead to other sets.
+    extended: bool,
+}
 
 impl Charset {
     /// From the bytes of Specific Character Set (0008,0005). The first value
-    /// counts; an unknown one is read as UTF-8 where that fits, else Latin-1.
+    /// counts where no escape sequence says otherwise; an unknown one is read
+    /// as UTF-8 where that fits, else Latin-1.
     pub(super) fn from_value(value: &[u8]) -> Self {
         let all = String::from_utf8_lossy(value);
         let mut terms = all.split('\\').map(|term| term.trim_matches([' ', '\0']));
@@ -22,26 +29,38 @@ impl Charset {
         } else {
             first
         };
-        match term {
-            // These say ASCII; bytes beyond it are undeclared, see `decode`.
-            "" | "ISO_IR 6" | "ISO 2022 IR 6" => Self(None),
-            _ => Self(SpecificCharacterSet::from_code(term)),
+        Self {
+            first: match term {
+                // These say ASCII; bytes beyond it are undeclared, see `decode`.
+                "" | "ISO_IR 6" | "ISO 2022 IR 6" => None,
+                _ => SpecificCharacterSet::from_code(term),
+            },
+            extended: all.contains('\\') || term.starts_with("ISO 2022"),
         }
     }
 
     /// The default character set.
     pub(super) const fn undeclared() -> Self {
-        Self(None)
+        Self {
+            first: None,
+            extended: false,
+        }
     }
 
     /// Decodes a text value and cleans it; empty when nothing is left.
     pub(super) fn decode(&self, vr: VR, value: &[u8]) -> String {
         let declared = match vr {
-            VR::LO | VR::LT | VR::PN | VR::SH | VR::ST | VR::UC | VR::UT => self.0.as_ref(),
+            VR::LO | VR::LT | VR::PN | VR::SH | VR::ST | VR::UC | VR::UT => self.first.as_ref(),
             _ => None,
         };
         if value.is_ascii() && !value.contains(&0x1B) {
             return clean(&String::from_utf8_lossy(value));
+        }
+        if self.extended
+            && value.contains(&0x1B)
+            && let Some(text) = decode_escaped(declared, value)
+        {
+            return clean(&text);
         }
         match declared.map(|set| set.decode(value)) {
             Some(Ok(text)) => clean(&text),

@@ -372,3 +372,26 @@ fn verify_text_far_beyond_the_standard_counts_as_absent() {
     assert!(note.message.contains("longer"), "{}", note.message);
     assert!(note.message.len() < 200);
 }
+
+/// An item may state a character set of its own: UTF-8 in a plan of Latin-1.
+#[test]
+fn verify_a_character_set_within_an_item_holds_for_it() {
+    let mut spec = PlanSpec {
+        character_set: "ISO_IR 100".to_owned(),
+        ..PlanSpec::default()
+    };
+    spec.beams[0].description = Some("X".repeat(8));
+    let beam = [(tags::BEAM_SEQUENCE, 0)];
+    let mut bytes = spec.with_text(&beam, tags::SPECIFIC_CHARACTER_SET, VR::CS, "ISO_IR 192");
+    let at = bytes
+        .windows(8)
+        .position(|window| window == b"XXXXXXXX")
+        .expect("the description");
+    // U+0141 L with stroke and U+017A z with acute are C5 81 and C5 BA in UTF-8 (RFC 3629).
+    bytes[at..at + 8].copy_from_slice(b"\xC5\x81odz\xC5\xBA ");
+    let plan = read_plan(&bytes).expect("readable");
+    assert_eq!(
+        plan.beams[0].description.get().as_deref(),
+        Some("\u{141}odz\u{17a}")
+    );
+}

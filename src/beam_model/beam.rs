@@ -34,6 +34,10 @@ pub struct BeamModel {
     pub off_axis: OffAxis,
     /// Exchange coefficient k of the collimator: c = (1+k) L U / (k L + U), U the upper and L the lower opening.
     pub exchange_k: f64,
+    /// Gaussian sigma of the primary's penumbra in the plane of the point, cm; `None` when not given.
+    pub penumbra_sigma_cm: Option<f64>,
+    /// Source to the plane that head scatter seems to come from, cm; `None` when not given.
+    pub extra_focal_distance_cm: Option<f64>,
     /// Tray transmission by tray ID.
     pub trays: Vec<(String, f64)>,
     /// Couch transmission by gantry angle.

@@ -111,6 +111,8 @@ pub(super) fn load_beam(
         output_factors,
         off_axis,
         exchange_k: entry.exchange_k,
+        penumbra_sigma_cm: entry.penumbra_sigma_cm,
+        extra_focal_distance_cm: entry.extra_focal_distance_cm,
         trays,
         couch,
         uncertainty,

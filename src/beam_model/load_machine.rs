@@ -221,6 +221,7 @@ fn collimation(
             .map(|jaw| JawPair {
                 moves_along: AxisEntry::axis(jaw.moves_along),
                 source_distance_cm: jaw.source_distance_cm,
+                transmission: jaw.transmission,
                 travel: travel(jaw.outward_limit_cm, jaw.across_limit_cm),
             })
             .collect(),

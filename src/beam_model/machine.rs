@@ -74,6 +74,8 @@ pub struct JawPair {
     pub moves_along: JawAxis,
     /// Source to the pair's end on the patient's side, cm.
     pub source_distance_cm: Option<f64>,
+    /// Transmission, a share; `None` when not known.
+    pub transmission: Option<f64>,
     /// Limits of travel.
     pub travel: Travel,
 }

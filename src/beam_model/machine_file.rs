@@ -5,9 +5,10 @@
 use serde::Deserialize;
 
 use super::machine_value::{
-    date, device_distance, device_travel, exchange_k, gantry, leaf_end_offset, open_transmission,
-    opening, photon_energy, positive_depth, proof_dose, reference_output, source_axis_distance,
-    source_surface_distance, spread, surface_distance, text, texts, transmission,
+    date, device_distance, device_travel, exchange_k, extra_focal, gantry, jaw_transmission,
+    leaf_end_offset, open_transmission, opening, penumbra, photon_energy, positive_depth,
+    proof_dose, reference_output, source_axis_distance, source_surface_distance, spread,
+    surface_distance, text, texts, transmission,
 };
 use super::{DataOrigin, DepthInterpolation, JawAxis, OffAxisKind};
 
@@ -90,6 +91,8 @@ pub(super) struct JawEntry {
     pub(super) place: JawPlace,
     #[serde(default, deserialize_with = "device_distance")]
     pub(super) source_distance_cm: Option<f64>,
+    #[serde(default, deserialize_with = "jaw_transmission")]
+    pub(super) transmission: Option<f64>,
     #[serde(default, deserialize_with = "device_travel")]
     pub(super) outward_limit_cm: Option<f64>,
     #[serde(default, deserialize_with = "device_travel")]
@@ -131,6 +134,10 @@ pub(super) struct BeamEntry {
     pub(super) fluence_mode_ids: Vec<String>,
     #[serde(deserialize_with = "exchange_k")]
     pub(super) exchange_k: f64,
+    #[serde(default, deserialize_with = "penumbra")]
+    pub(super) penumbra_sigma_cm: Option<f64>,
+    #[serde(default, deserialize_with = "extra_focal")]
+    pub(super) extra_focal_distance_cm: Option<f64>,
     pub(super) reference: ReferenceEntry,
     pub(super) depth_table: DepthTableEntry,
     pub(super) output_factors: OutputEntry,

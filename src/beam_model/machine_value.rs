@@ -119,6 +119,9 @@ optional! {
     source_surface_distance: surface_distance;
     device_distance: mounted_distance;
     device_travel: travel;
+    jaw_transmission: transmission;
+    penumbra: penumbra_sigma;
+    extra_focal: extra_focal_distance;
 }
 
 bounded! {
@@ -130,6 +133,10 @@ bounded! {
     exchange_k: 0.3, 4.0, "";
     /// Dosimetric leaf gaps of 0.7 to 2.3 mm are in use, so half of that per leaf end (common practice).
     leaf_end_offset: -0.2, 0.5, "cm";
+    /// Gaussian widths of 0.1 to 0.4 cm fit measured penumbras (common practice); wider is a slip of unit.
+    penumbra_sigma: 0.001, 1.0, "cm";
+    /// Flattening filters and their like sit between target and monitor chamber (common practice).
+    extra_focal_distance: 2.0, 25.0, "cm";
     gantry: 0.0, 360.0, "degrees";
     /// Above 10 per cent no beam could be verified with it.
     spread: 0.0, 10.0, "per cent";

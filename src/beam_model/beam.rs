@@ -1,9 +1,12 @@
 //! One beam of a machine: reference output, depth-dose table, output factors,
 //! off-axis ratios, transmissions and uncertainties.
 
+use std::sync::Arc;
+
 use serde::Serialize;
 
-use super::{Grid, Lookup, OutOfRange, ProofPoint};
+use super::scatter::{NoKernel, ScatterAtDepth, ScatterKernel};
+use super::{Grid, HeadScatter, Lookup, OutOfRange, ProofPoint};
 use crate::plan::{BeamEnergy, RadiationType};
 use crate::quantity::{
     CollimatorSquare, PointSquare, ReferenceDepthSquare, SurfaceSquare, tolerance,
@@ -46,6 +49,10 @@ pub struct BeamModel {
     pub uncertainty: BeamUncertainty,
     /// Measured points that prove the beam.
     pub proof: Vec<ProofPoint>,
+    /// Head scatter as two sources; `None` when the model does not give the distances that it needs.
+    pub head_scatter: Option<HeadScatter>,
+    /// Scatter kernel of the tables, worked out when first asked for.
+    pub(super) kernel: Arc<ScatterKernel>,
 }
 
 /// D'0 and where it holds: a 10 cm x 10 cm field at the isocentre plane, depth d0, source distance `S_ref`.
@@ -235,6 +242,14 @@ impl BeamModel {
     /// When radius or depth is outside the table.
     pub fn off_axis_ratio(&self, radius_cm: f64, depth_cm: f64) -> Result<Lookup, OutOfRange> {
         self.off_axis.grid.at(radius_cm, depth_cm)
+    }
+
+    /// The scatter kernel at an effective depth, cm.
+    ///
+    /// # Errors
+    /// When the depth is outside the table, or too few squares reach it.
+    pub fn scatter_at(&self, depth_cm: f64) -> Result<ScatterAtDepth<'_>, NoKernel> {
+        self.kernel.at(self, depth_cm)
     }
 
     /// Transmission of a tray by its ID.

@@ -1,9 +1,12 @@
 //! One beam: its entry in `machine.toml` joined with its tables, and rules over
 //! several of its keys. The tables themselves are for `load_tables`.
 
+use std::sync::Arc;
+
 use super::load_tables::{load_depth_table, load_off_axis, load_output_factors};
 use super::machine_file::{BeamEntry, CouchEntry, DepthKindEntry, NormalisedAt, RadiationEntry};
 use super::model_folder::ModelFolder;
+use super::scatter::ScatterKernel;
 use super::{
     BeamModel, BeamUncertainty, CouchArc, ModelError, ProofPoint, ReferenceOutput, TableKind,
 };
@@ -98,6 +101,7 @@ pub(super) fn load_beam(
         depth_cm: point.depth_cm,
         measured_cgy_per_mu: point.measured_cgy_per_mu,
     });
+    let kernel = Arc::new(ScatterKernel::new(depth_table.rows()));
     Ok(BeamModel {
         radiation: match entry.radiation {
             RadiationEntry::Photon => RadiationType::Photon,
@@ -117,6 +121,8 @@ pub(super) fn load_beam(
         couch,
         uncertainty,
         proof: proof.collect(),
+        head_scatter: None,
+        kernel,
         label: entry.label,
     })
 }

@@ -11,8 +11,8 @@ use super::machine_file::{
 };
 use super::model_folder::{MACHINE_FILE, ModelFolder, line_of};
 use super::{
-    Approval, BeamModel, Collimation, JawPair, LeafBank, MachineModel, ModelError, ModelSet,
-    Provenance, Travel,
+    Approval, BeamModel, Collimation, HeadScatter, JawPair, LeafBank, MachineModel, ModelError,
+    ModelSet, Provenance, Travel,
 };
 use crate::quantity::{Quantity, tolerance};
 
@@ -102,7 +102,8 @@ pub fn load_machine(folder: &Path) -> Result<MachineModel, ModelError> {
     }
     let mut beams: Vec<BeamModel> = Vec::new();
     for entry in file.beams {
-        let beam = load_beam(&mut files, entry)?;
+        let mut beam = load_beam(&mut files, entry)?;
+        beam.head_scatter = HeadScatter::fit(file.sad_cm, &collimation, &beam);
         refuse_second(&path, &beams, &beam)?;
         beams.push(beam);
     }

@@ -159,6 +159,14 @@ pub struct ProofPoint {
     pub measured_cgy_per_mu: f64,
 }
 
+impl Collimation {
+    /// The jaw pair that limits an axis.
+    #[must_use]
+    pub fn jaw(&self, axis: JawAxis) -> Option<&JawPair> {
+        self.jaws.iter().find(|jaw| jaw.moves_along == axis)
+    }
+}
+
 impl MachineModel {
     /// Whether the model may be used on this day: approved, and the approval still holds.
     #[must_use]

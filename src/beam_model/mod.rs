@@ -7,6 +7,7 @@ mod beam;
 mod check;
 mod derive;
 mod error;
+mod head_scatter;
 pub mod kernel;
 mod load_beam;
 mod load_machine;
@@ -15,6 +16,7 @@ mod machine;
 mod machine_file;
 mod machine_value;
 mod model_folder;
+pub mod scatter;
 mod table;
 mod table_file;
 
@@ -25,6 +27,7 @@ pub use beam::{
 pub use check::{ModelFinding, ModelSeverity, TablePlace, check_machine, tpr20_10_from_pdd20_10};
 pub use derive::{DerivedTable, derivable_grid, derive_table};
 pub use error::ModelError;
+pub use head_scatter::{HeadScatter, HeadWindow};
 pub use load_machine::{load_machine, load_models};
 pub use machine::{
     Approval, Collimation, DataOrigin, JawAxis, JawPair, LeafBank, MachineModel, ModelSet,

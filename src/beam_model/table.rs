@@ -386,41 +386,48 @@ impl Grid {
     }
 }
 
-/// Slopes of the monotone cubic interpolant, column by column (Fritsch & Carlson,
-/// SIAM J. Numer. Anal. 17:238, 1980; interior slopes as the weighted harmonic
-/// mean, ends one-sided three-point, limited to keep monotonicity).
+/// Slopes of the monotone cubic interpolant, column by column.
 fn column_slopes(rows: &[f64], width: usize, values: &[f64]) -> Vec<f64> {
-    let count = rows.len();
     let mut slopes = vec![0.0; values.len()];
+    for column in 0..width {
+        let values: Vec<f64> = values.iter().skip(column).step_by(width).copied().collect();
+        for (row, slope) in monotone_slopes(rows, &values).into_iter().enumerate() {
+            slopes[row * width + column] = slope;
+        }
+    }
+    slopes
+}
+
+/// Slopes of the monotone cubic interpolant at its nodes (Fritsch & Carlson, SIAM J. Numer. Anal.
+/// 17:238, 1980; interior slopes as the weighted harmonic mean, ends one-sided three-point, limited
+/// to keep monotonicity). `places` rise; both slices are of one length.
+pub(super) fn monotone_slopes(places: &[f64], values: &[f64]) -> Vec<f64> {
+    let count = places.len();
+    let mut slopes = vec![0.0; count];
     if count < 2 {
         return slopes;
     }
-    for column in 0..width {
-        let value = |row: usize| values[row * width + column];
-        let step = |row: usize| rows[row + 1] - rows[row];
-        let secant = |row: usize| (value(row + 1) - value(row)) / step(row);
-        if count == 2 {
-            slopes[column] = secant(0);
-            slopes[width + column] = secant(0);
-            continue;
-        }
-        for row in 1..count - 1 {
-            let (before, after) = (secant(row - 1), secant(row));
-            if before * after > 0.0 {
-                let weight_before = 2.0 * step(row) + step(row - 1);
-                let weight_after = step(row) + 2.0 * step(row - 1);
-                slopes[row * width + column] = (weight_before + weight_after)
-                    / (weight_before / before + weight_after / after);
-            }
-        }
-        slopes[column] = end_slope(step(0), step(1), secant(0), secant(1));
-        slopes[(count - 1) * width + column] = end_slope(
-            step(count - 2),
-            step(count - 3),
-            secant(count - 2),
-            secant(count - 3),
-        );
+    let step = |node: usize| places[node + 1] - places[node];
+    let secant = |node: usize| (values[node + 1] - values[node]) / step(node);
+    if count == 2 {
+        return vec![secant(0); 2];
     }
+    for node in 1..count - 1 {
+        let (before, after) = (secant(node - 1), secant(node));
+        if before * after > 0.0 {
+            let weight_before = 2.0 * step(node) + step(node - 1);
+            let weight_after = step(node) + 2.0 * step(node - 1);
+            slopes[node] =
+                (weight_before + weight_after) / (weight_before / before + weight_after / after);
+        }
+    }
+    slopes[0] = end_slope(step(0), step(1), secant(0), secant(1));
+    slopes[count - 1] = end_slope(
+        step(count - 2),
+        step(count - 3),
+        secant(count - 2),
+        secant(count - 3),
+    );
     slopes
 }
 

@@ -8,6 +8,7 @@
 mod fingerprint;
 mod frame;
 mod given;
+mod normal;
 mod range;
 mod square;
 pub mod tolerance;
@@ -15,6 +16,7 @@ pub mod tolerance;
 pub use fingerprint::{hex, sha256_hex};
 pub use frame::{Collimator, Fixed, Frame, Gantry, Patient, Point, Vector};
 pub use given::Given;
+pub use normal::{normal_between, normal_share};
 pub use range::{CredibleRange, Quantity};
 pub use square::{
     CollimatorSquare, PointSquare, ReferenceDepthSquare, SurfaceSquare, sterling_side_cm,

@@ -6,7 +6,9 @@ use super::compare::beam_entry;
 use super::group::{judge_group, strictest_levels};
 use super::{BeamEntry, PlanEntry, Rivals, SharedPointSum, Verdict};
 use crate::beam_model::{DataOrigin, ModelSet};
-use crate::dose::{BeamRequest, DepthRow, ModelAnswer, Obstacle, ObstacleKind, calculate_beam};
+use crate::dose::{
+    BeamRequest, DepthRow, ModelAnswer, Obstacle, ObstacleKind, StepLimits, calculate_beam,
+};
 use crate::plan::{Effect, NoteScope, Plan};
 use crate::settings::Site;
 
@@ -43,6 +45,7 @@ pub fn audit_plan(input: PlanInput<'_>) -> PlanEntry {
                 model: model_for(input, beam_index),
                 site,
                 depth_row: depth_row_for(input, beam_index),
+                steps: StepLimits::default(),
             });
             calculation.obstacles.extend(rival_obstacle(input.rivals));
             beam_entry(plan, calculation, site)

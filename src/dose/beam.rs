@@ -14,13 +14,16 @@ use super::point::choose_point;
 use super::prerequisite::{
     group_obstacles, meterset_obstacle, photon_model, reading_obstacles, sad_obstacles,
 };
+use super::shaped::{DepthTrack, ShapedField, calculate_shaped, track_depths};
 use super::spread::expected_spread;
-use super::technique::{classify_delivered, technique_obstacles, tilt_obstacles, wedges_stay_out};
+use super::technique::{
+    classify_delivered, shaped_wedge_obstacle, technique_obstacles, tilt_obstacles, wedges_stay_out,
+};
 use super::{
     BeamCalculation, DepthBasis, FactorError, FieldDepth, FieldInput, FieldModel, Form, Method,
-    Obstacle, ObstacleKind, Spread, Squares, Technique, Trace, dose_per_mu,
+    Obstacle, ObstacleKind, Squares, StepLimits, Technique, Trace, dose_per_mu,
 };
-use crate::beam_model::{BeamModel, MachineModel, TableKind};
+use crate::beam_model::{MachineModel, TableKind};
 use crate::plan::{Beam, ControlPoint, FractionGroup, Plan, RadiationType, ReferencedBeam};
 use crate::quantity::tolerance;
 use crate::settings::Site;
@@ -52,6 +55,8 @@ pub struct BeamRequest<'a> {
     pub site: &'a Site,
     /// The user's depth for this beam.
     pub depth_row: Option<&'a DepthRow>,
+    /// How finely shaped and moving fields are integrated.
+    pub steps: StepLimits,
 }
 
 /// Everything that can be worked out about one beam, with every obstacle.
@@ -75,9 +80,8 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
     if technique == Technique::Setup {
         return result;
     }
-    result
-        .obstacles
-        .extend(technique_obstacles(beam, technique, &delivered));
+    let technique_obstacles = technique_obstacles(beam, technique, &delivered);
+    result.obstacles.extend(technique_obstacles.iter().cloned());
     basic_obstacles(request, beam, &delivered, group, reference, &mut result);
 
     let model = photon_model(request, beam, &mut result);
@@ -89,7 +93,7 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         return result;
     };
     let placement = place_point(request, beam, at, reference, technique, &mut result);
-    let depths = depths_of(
+    let (depths, track) = depths_of(
         request,
         beam,
         reference,
@@ -97,7 +101,7 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         &placement,
         &mut result,
     );
-    let devices = devices_of(beam, at, technique, model, &depths, &mut result);
+    let mut devices = devices_of(beam, at, technique, model, &depths, &mut result);
     let rectangle = matches!(technique, Technique::Static | Technique::Wedge);
     if let (true, Some(model), Some([x_cm, y_cm])) = (rectangle, model, openings(at)) {
         result.squares = Some(Squares {
@@ -105,20 +109,35 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
             phantom: placement.ray.map(|ray| point_square(x_cm, y_cm, ray)),
         });
     }
-    if technique == Technique::Static
-        && beam.radiation.value() == Some(&RadiationType::Photon)
+    if is_shaped(technique) {
+        devices
+            .uncovered
+            .extend(shaped_wedge_obstacle(beam, &delivered));
+    }
+    if beam.radiation.value() == Some(&RadiationType::Photon)
         && devices.uncovered.is_empty()
         && let Some(model) = model
     {
-        calculate(
-            request,
-            at,
-            model,
-            &placement,
-            &depths,
-            &devices,
-            &mut result,
-        );
+        if technique == Technique::Static {
+            calculate(
+                request,
+                at,
+                model,
+                &placement,
+                &depths,
+                &devices,
+                &mut result,
+            );
+        } else if is_shaped(technique) && technique_obstacles.is_empty() {
+            calculate_by_integration(
+                request,
+                (beam, &delivered),
+                model,
+                (&placement, &depths, track.as_ref()),
+                &devices,
+                &mut result,
+            );
+        }
     }
     result.obstacles.extend(devices.uncovered);
     result.remarks.extend(devices.remarks);
@@ -158,6 +177,7 @@ fn described(
         plan_ssd_cm: first.and_then(|point| point.ssd_cm.get()),
         trace: None,
         method: None,
+        shaped: None,
         spread: None,
         obstacles: Vec::new(),
         remarks: Vec::new(),
@@ -231,8 +251,8 @@ fn depths_of(
     delivered: &[Interval<'_>],
     placement: &Placement,
     result: &mut BeamCalculation,
-) -> DepthFindings {
-    let found = find_depths(&DepthQuestion {
+) -> (DepthFindings, Option<DepthTrack>) {
+    let question = DepthQuestion {
         plan: request.plan,
         beam,
         reference,
@@ -241,11 +261,18 @@ fn depths_of(
         delivering: &delivering_points(delivered),
         row: request.depth_row,
         limit_cm: request.site.technical.depth_disagreement_mm / 10.0,
-    });
+    };
+    let (found, track) = if result.technique == Technique::Arc {
+        track_depths(&question, placement.geometry.as_ref(), delivered)
+    } else {
+        let found = find_depths(&question);
+        let track = found.candidates.first().map(DepthTrack::of);
+        (found, track)
+    };
     result.depths.clone_from(&found.candidates);
     result.obstacles.extend(found.obstacles.iter().cloned());
     result.remarks.extend(found.remarks.iter().cloned());
-    found
+    (found, track)
 }
 
 fn devices_of(
@@ -261,7 +288,7 @@ fn devices_of(
     }
     let mut devices = hardware(beam, model.map(|model| model.beam));
     if let (Some(model), Some(gantry_deg)) = (model, at.gantry_deg.get())
-        && technique != Technique::Arc
+        && !is_shaped(technique)
     {
         let couch_deg = at.couch_deg.get().unwrap_or_default();
         couch(model.beam, gantry_deg, couch_deg, depths, &mut devices);
@@ -337,7 +364,8 @@ fn calculate(
     ));
     match dose_per_mu(&field) {
         Ok(trace) => {
-            result.spread = Some(spread_of(&field, model.beam, depth.basis, site));
+            let (sigma_cm, name) = depth_sigma(depth.basis, site);
+            result.spread = Some(expected_spread(&field, model.beam, sigma_cm, name));
             note_result(trace, result);
         }
         Err(error) => result.obstacles.push(factor_obstacle(&error)),
@@ -366,12 +394,61 @@ fn factor_obstacle(error: &FactorError) -> Obstacle {
     }
 }
 
-fn spread_of(field: &FieldInput<'_>, beam: &BeamModel, basis: DepthBasis, site: &Site) -> Spread {
+/// Whether the technique is integrated rather than multiplied out.
+const fn is_shaped(technique: Technique) -> bool {
+    matches!(
+        technique,
+        Technique::Mlc
+            | Technique::Blocked
+            | Technique::Segmented
+            | Technique::Dynamic
+            | Technique::Arc
+    )
+}
+
+/// Leaves, blocks, segments, arcs.
+fn calculate_by_integration(
+    request: &BeamRequest<'_>,
+    (beam, delivered): (&Beam, &[Interval<'_>]),
+    model: FieldModel<'_>,
+    (placement, depths, track): (&Placement, &DepthFindings, Option<&DepthTrack>),
+    devices: &Modifiers,
+    result: &mut BeamCalculation,
+) {
+    let ModelAnswer::Found(machine) = request.model else {
+        return;
+    };
+    let (Some(geometry), Some(track), Some(depth)) = (
+        placement.geometry.as_ref(),
+        track,
+        depths.candidates.first(),
+    ) else {
+        return;
+    };
+    calculate_shaped(
+        &ShapedField {
+            beam,
+            delivered,
+            machine,
+            model,
+            geometry,
+            depths: track,
+            depth_sigma: depth_sigma(depth.basis, request.site),
+            tray: devices.tray.as_ref(),
+            site: request.site,
+            steps: request.steps,
+        },
+        result,
+    );
+}
+
+/// 1-sigma uncertainty of a depth, cm, and its basis in words.
+fn depth_sigma(basis: DepthBasis, site: &Site) -> (f64, &'static str) {
     let sigma = &site.depth_uncertainty;
     let (sigma_mm, name) = match basis {
         DepthBasis::Table => (sigma.table_mm, "the depth table"),
         DepthBasis::Plan => (sigma.plan_mm, "the plan's point depth"),
         DepthBasis::Ssd => (sigma.ssd_mm, "SSD and a flat surface"),
     };
-    expected_spread(field, beam, sigma_mm / 10.0, name)
+    (sigma_mm / 10.0, name)
 }

@@ -10,6 +10,8 @@ use crate::quantity::{Given, Point, tolerance};
 /// An interval between two successive control points in which meterset accrues.
 #[derive(Clone, Copy)]
 pub(super) struct Interval<'a> {
+    /// Item index of the control point at its start.
+    pub(super) start_index: usize,
     /// At its start.
     pub(super) start: &'a ControlPoint,
     /// At its end.
@@ -34,7 +36,8 @@ pub(super) fn intervals(beam: &Beam) -> Vec<Interval<'_>> {
     let ends = beam.control_points.iter().skip(1);
     starts
         .zip(ends)
-        .filter_map(|(start, end)| {
+        .enumerate()
+        .filter_map(|(start_index, (start, end))| {
             let weights = (start.cumulative_weight.get(), end.cumulative_weight.get());
             let weight = match weights {
                 (Some(before), Some(after)) => (after - before).abs(),
@@ -42,7 +45,12 @@ pub(super) fn intervals(beam: &Beam) -> Vec<Interval<'_>> {
             };
             let accrues = weights_missing(weights)
                 || weight > tolerance::METERSET_WEIGHT_RELATIVE * final_weight;
-            accrues.then_some(Interval { start, end, weight })
+            accrues.then_some(Interval {
+                start_index,
+                start,
+                end,
+                weight,
+            })
         })
         .collect()
 }

@@ -22,6 +22,7 @@ mod point;
 mod prerequisite;
 mod proof;
 mod ray;
+mod shaped;
 mod spread;
 mod technique;
 mod text;
@@ -40,6 +41,7 @@ pub use outcome::{
 };
 pub use proof::prove;
 pub use ray::RayPoint;
+pub use shaped::{ControlPointDose, FluenceImage, ShapedResult, Shares, StepLimits};
 pub use spread::expected_spread;
 pub use technique::classify;
 pub use trace::{Factor, FactorName, Input, Trace};

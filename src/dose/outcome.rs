@@ -7,7 +7,7 @@ use std::sync::Arc;
 
 use serde::Serialize;
 
-use super::Trace;
+use super::{ShapedResult, Trace};
 use crate::quantity::{Collimator, CollimatorSquare, Patient, Point, PointSquare};
 
 /// Technique of a beam, first match of: setup, electron, arc, dynamic, segmented, wedge, blocked, mlc, static.
@@ -58,6 +58,8 @@ impl Technique {
 pub enum Method {
     /// Factor formalism.
     Factors,
+    /// Scatter integration.
+    ScatterIntegration,
 }
 
 impl Method {
@@ -66,6 +68,7 @@ impl Method {
     pub const fn term(self) -> &'static str {
         match self {
             Self::Factors => "factors",
+            Self::ScatterIntegration => "scatter-integration",
         }
     }
 }
@@ -312,6 +315,8 @@ pub struct BeamCalculation {
     pub trace: Option<Trace>,
     /// Method of the trace.
     pub method: Option<Method>,
+    /// What a scatter integration found besides the dose.
+    pub shaped: Option<ShapedResult>,
     /// Expected spread of the result.
     pub spread: Option<Spread>,
     /// Why the result is no verification; empty when it is one.

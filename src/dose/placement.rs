@@ -3,12 +3,14 @@
 //! is missing is an obstacle and never taken as zero, except tilts, which the
 //! standard leaves out when there is none.
 
-use super::geometry::{CouchAngles, HeadAngles, patient_to_collimator, ray_through};
+use super::geometry::{
+    CouchAngles, fixed_to_gantry, gantry_to_collimator, patient_to_fixed, ray_through,
+};
 use super::point::ChosenPoint;
 use super::technique::tilt_obstacles;
 use super::{DosePoint, Obstacle, ObstacleKind, RayPoint, Technique};
 use crate::plan::{Beam, ControlPoint, PatientPosition, PatientSetup, Plan};
-use crate::quantity::{Collimator, Patient, Point, tolerance};
+use crate::quantity::{Collimator, Fixed, Patient, Point, tolerance};
 
 /// A point in the beam.
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -17,12 +19,33 @@ pub(super) struct Placement {
     pub(super) point: Option<DosePoint>,
     /// Its ray, when geometry and source distance are known and the beam stands still.
     pub(super) ray: Option<RayPoint>,
+    /// Where the point lies for any gantry angle, when all else is known.
+    pub(super) geometry: Option<BeamGeometry>,
     /// Whether the patient setup says FIXED_SSD.
     pub(super) fixed_ssd: bool,
     /// What is missing.
     pub(super) obstacles: Vec<Obstacle>,
     /// Worth telling.
     pub(super) remarks: Vec<String>,
+}
+
+/// A point and everything about a beam's geometry but the gantry angle.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(super) struct BeamGeometry {
+    fixed: Point<Fixed>,
+    collimator_deg: f64,
+    sad_cm: f64,
+}
+
+impl BeamGeometry {
+    /// The point's ray at a gantry angle; `None` when the point is not below the source.
+    pub(super) fn ray_at(&self, gantry_deg: f64) -> Option<RayPoint> {
+        let gantry = fixed_to_gantry(self.fixed, gantry_deg);
+        ray_through(
+            gantry_to_collimator(gantry, self.collimator_deg),
+            self.sad_cm,
+        )
+    }
 }
 
 impl Placement {
@@ -83,6 +106,19 @@ pub(super) fn place(
             .position
             .and_then(|position| in_collimator(at, chosen.patient, position)),
     };
+    placement.geometry = match at_isocentre {
+        true => Some(Point::origin()),
+        false => setup
+            .position
+            .and_then(|position| in_fixed(at, chosen.patient, position)),
+    }
+    .zip(at.collimator_deg.get())
+    .zip(beam.sad_cm.get())
+    .map(|((fixed, collimator_deg), sad_cm)| BeamGeometry {
+        fixed,
+        collimator_deg,
+        sad_cm,
+    });
     // While the gantry turns the point has no one place in the beam.
     let collimator = collimator.filter(|_| technique != Technique::Arc);
     let ray = beam
@@ -111,6 +147,16 @@ fn in_collimator(
     point: Point<Patient>,
     position: PatientPosition,
 ) -> Option<Point<Collimator>> {
+    let fixed = in_fixed(at, point, position)?;
+    let gantry = fixed_to_gantry(fixed, at.gantry_deg.get()?);
+    Some(gantry_to_collimator(gantry, at.collimator_deg.get()?))
+}
+
+fn in_fixed(
+    at: &ControlPoint,
+    point: Point<Patient>,
+    position: PatientPosition,
+) -> Option<Point<Fixed>> {
     if !tilt_obstacles(at).is_empty() {
         return None;
     }
@@ -120,16 +166,10 @@ fn in_collimator(
         pitch_deg: at.couch_pitch_deg.get().unwrap_or_default(),
         roll_deg: at.couch_roll_deg.get().unwrap_or_default(),
     };
-    let head = HeadAngles {
-        gantry_deg: at.gantry_deg.get()?,
-        collimator_deg: at.collimator_deg.get()?,
-    };
-    Some(patient_to_collimator(
-        point,
-        at.isocentre.get()?,
+    Some(patient_to_fixed(
+        point - at.isocentre.get()?,
         position,
         couch,
-        head,
     ))
 }
 

@@ -84,7 +84,7 @@ fn sets_of_plan<'a>(question: &DepthQuestion<'a>, found: &mut DepthFindings) -> 
 
 /// Whether a control point's dose reference is at the point in question: by its coordinates, or, when it has
 /// none, because it is the one that the referenced beam names for the dose at its specification point.
-fn belongs(question: &DepthQuestion<'_>, number: Option<i32>) -> bool {
+pub(super) fn belongs(question: &DepthQuestion<'_>, number: Option<i32>) -> bool {
     let (Some(number), Some(point)) = (number, question.point) else {
         return false;
     };

@@ -57,6 +57,15 @@ pub(super) fn classify_delivered(beam: &Beam, intervals: &[Interval<'_>]) -> Tec
     }
 }
 
+/// A wedge that is, or may be, in a field that leaves, blocks or motion shape.
+pub(super) fn shaped_wedge_obstacle(beam: &Beam, intervals: &[Interval<'_>]) -> Option<Obstacle> {
+    wedge_in(beam, intervals).then(|| {
+        obstacle(
+            "a wedge is in a shaped or moving field, or its position is not stated, which this version does not calculate: verify the beam by other means",
+        )
+    })
+}
+
 fn turns(start: &Given<f64>, end: &Given<f64>, direction: &Given<String>) -> bool {
     // A stated direction with equal angles is a whole turn, or junk: no static beam either way.
     let directed = matches!(
@@ -141,7 +150,23 @@ pub(super) fn technique_obstacles(
         ));
     }
     found.extend(turning_obstacles(technique, intervals));
+    found.extend(whole_turn_obstacle(intervals));
     found
+}
+
+/// A direction with equal angles: a whole turn or none. Among other intervals it is none; alone it may be either.
+fn whole_turn_obstacle(intervals: &[Interval<'_>]) -> Option<Obstacle> {
+    let [interval] = intervals else {
+        return None;
+    };
+    let Interval { start, end, .. } = interval;
+    let alone = gantry_turns(interval) && same_angle(&start.gantry_deg, &end.gantry_deg);
+    alone.then(|| {
+        obstacle(format!(
+            "the gantry has a rotation direction (300A,011F) and the same angle of {} at both ends: a whole turn and standing still cannot be told apart",
+            degrees(&start.gantry_deg)
+        ))
+    })
 }
 
 fn uncovered_reason(
@@ -150,13 +175,14 @@ fn uncovered_reason(
     intervals: &[Interval<'_>],
 ) -> Option<&'static str> {
     match technique {
-        Technique::Setup | Technique::Static => None,
+        Technique::Setup
+        | Technique::Static
+        | Technique::Arc
+        | Technique::Dynamic
+        | Technique::Segmented
+        | Technique::Blocked => None,
         Technique::Electron => Some("the beam is an electron beam"),
-        Technique::Arc => Some("the gantry turns while meterset accrues"),
-        Technique::Dynamic => Some("jaws or leaves move while meterset accrues"),
-        Technique::Segmented => Some("the beam has several apertures"),
         Technique::Wedge => Some("a wedge is in the beam, or its position is not stated"),
-        Technique::Blocked => Some("blocks shape the field"),
         Technique::Mlc => {
             let at = intervals.first().map(|interval| interval.start);
             match at
@@ -166,7 +192,7 @@ fn uncovered_reason(
                 Some(Leaves::Unknown) => {
                     Some("leaves may shape the field (their positions or boundaries are not given)")
                 }
-                _ => Some("leaves shape the field"),
+                _ => None,
             }
         }
     }

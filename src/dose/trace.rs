@@ -12,6 +12,10 @@ pub enum FactorName {
     ReferenceOutput,
     /// Sc.
     CollimatorScatter,
+    /// Sc(A): head scatter of an aperture.
+    ApertureHeadScatter,
+    /// F(A): primary and phantom scatter of an aperture per unit in-air fluence.
+    ApertureInPhantom,
     /// Sp.
     PhantomScatter,
     /// TPR or TMR.
@@ -41,6 +45,8 @@ impl FactorName {
         match self {
             Self::ReferenceOutput => "dose per MU at the reference point",
             Self::CollimatorScatter => "collimator scatter factor",
+            Self::ApertureHeadScatter => "head scatter factor of the aperture",
+            Self::ApertureInPhantom => "dose in phantom per unit in-air fluence",
             Self::PhantomScatter => "phantom scatter factor",
             Self::TissuePhantomRatio => "tissue-phantom ratio",
             Self::PercentDepthDose => "percent depth dose / 100",
@@ -60,6 +66,8 @@ impl FactorName {
         match self {
             Self::ReferenceOutput => "D'0",
             Self::CollimatorScatter => "Sc",
+            Self::ApertureHeadScatter => "Sc(A)",
+            Self::ApertureInPhantom => "F(A)",
             Self::PhantomScatter => "Sp",
             Self::TissuePhantomRatio => "TPR",
             Self::PercentDepthDose => "PDD/100",

@@ -73,6 +73,11 @@ pub struct ActionLevels {
 pub struct Technical {
     /// A static field's point nearer than this to a field edge, in the point's plane, is outside the method's range, cm.
     pub edge_margin_cm: f64,
+    /// A segmented or moving field whose open fluence changes by more than this within the edge margin of the point is
+    /// outside the method's range, per cent of the fluence at the point.
+    pub modulated_fluence_change_percent: f64,
+    /// A segmented or moving field with less than this share of the point's dose from open primary is outside the method's range, per cent.
+    pub modulated_open_primary_percent: f64,
     /// Two depth bases (or SSDs) of one point may differ by this, mm.
     pub depth_disagreement_mm: f64,
 }
@@ -177,6 +182,8 @@ impl Default for Technical {
     fn default() -> Self {
         Self {
             edge_margin_cm: 1.0,
+            modulated_fluence_change_percent: 30.0,
+            modulated_open_primary_percent: 50.0,
             depth_disagreement_mm: 5.0,
         }
     }

@@ -139,6 +139,7 @@ fn entry(index: usize, number: i32, mu: f64, dose_gy: f64) -> BeamEntry {
             plan_ssd_cm: None,
             trace: None,
             method: None,
+            shaped: None,
             spread: None,
             obstacles: Vec::new(),
             remarks: Vec::new(),

@@ -10,7 +10,9 @@ mod worked_examples;
 use std::path::PathBuf;
 
 use counterfoil::beam_model::{MachineModel, load_machine};
-use counterfoil::dose::{BeamCalculation, BeamRequest, ModelAnswer, ObstacleKind, calculate_beam};
+use counterfoil::dose::{
+    BeamCalculation, BeamRequest, ModelAnswer, ObstacleKind, StepLimits, calculate_beam,
+};
 use counterfoil::plan::{
     Beam, ControlPoint, DeliveryType, DeviceKind, FractionGroup, LimitingDevice, PatientPosition,
     PatientSetup, Plan, RadiationType, ReferencedBeam,
@@ -115,6 +117,7 @@ fn calculate_with(plan: &Plan, machine: &MachineModel) -> BeamCalculation {
         model: ModelAnswer::Found(machine),
         site: &Site::default(),
         depth_row: None,
+        steps: StepLimits::default(),
     })
 }
 

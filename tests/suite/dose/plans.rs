@@ -6,7 +6,7 @@ use std::sync::Arc;
 use counterfoil::beam_model::{CouchArc, MachineModel};
 use counterfoil::dose::{
     BeamCalculation, BeamRequest, DepthBasis, DepthRow, FactorName, ModelAnswer, ObstacleKind,
-    PointBasis, Technique, calculate_beam,
+    PointBasis, StepLimits, Technique, calculate_beam,
 };
 use counterfoil::plan::{
     Accessory, Applicator, Block, Bolus, Compensator, DeliveryType, DeviceKind, DoseReference,
@@ -472,6 +472,7 @@ fn request<'a>(
         model: ModelAnswer::Found(machine),
         site,
         depth_row,
+        steps: StepLimits::default(),
     }
 }
 

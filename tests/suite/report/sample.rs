@@ -249,6 +249,7 @@ fn calculation(technique: Technique) -> BeamCalculation {
         plan_ssd_cm: Some(90.1),
         trace: Some(trace()),
         method: Some(Method::Factors),
+        shaped: None,
         spread: Some(spread()),
         obstacles: Vec::new(),
         remarks: Vec::new(),

@@ -8,7 +8,7 @@ use std::sync::OnceLock;
 
 use counterfoil::audit::Verdict;
 use counterfoil::beam_model::{ModelSet, load_models};
-use counterfoil::dose::{BeamRequest, ModelAnswer, calculate_beam};
+use counterfoil::dose::{BeamRequest, ModelAnswer, StepLimits, calculate_beam};
 use counterfoil::plan::{Plan, read_plan};
 use counterfoil::settings::Site;
 
@@ -252,6 +252,7 @@ fn dose_per_mu_cgy(plan: &Plan, number: i32, group: (usize, usize)) -> f64 {
         model: ModelAnswer::Found(models().machine_for(machine).expect("a model")),
         site: &Site::default(),
         depth_row: None,
+        steps: StepLimits::default(),
     });
     let obstacles = &calculation.obstacles;
     assert!(obstacles.is_empty(), "{label:?}, {number}: {obstacles:?}");

@@ -1,0 +1,142 @@
+//! The meterset-weighted open fluence in the beam's-eye view, as an image: what
+//! a moving field delivers on the whole. Dose is not worked out from it, but for
+//! the off-axis weight of the scatter.
+
+use std::fmt::Write as _;
+use std::sync::Arc;
+
+use serde::{Serialize, Serializer};
+
+use super::opening::Opening;
+
+/// Side of a cell, cm at the isocentre plane.
+const CELL_CM: f64 = 0.25;
+
+/// Half of the imaged square, cm.
+const HALF_CM: f64 = 20.0;
+
+/// Cells along a side.
+const CELLS: usize = 160;
+
+/// The image, cropped to where something is open; row by row from the lowest y.
+#[derive(Clone, Debug, Default, PartialEq, Serialize)]
+pub struct FluenceImage {
+    /// Lower edge of the first cell along x, cm at the isocentre plane in the collimator system.
+    pub x_from_cm: f64,
+    /// Lower edge of the first row along y, cm.
+    pub y_from_cm: f64,
+    /// Side of a cell, cm.
+    pub cell_cm: f64,
+    /// Cells along x.
+    pub columns: usize,
+    /// Cells along y.
+    pub rows: usize,
+    /// Share of the meterset for which a cell is open, 0 to 255 for 0 to 1; two hexadecimal digits each in JSON.
+    #[serde(serialize_with = "as_hex")]
+    pub values: Arc<[u8]>,
+}
+
+fn as_hex<S: Serializer>(values: &[u8], serializer: S) -> Result<S::Ok, S::Error> {
+    let mut text = String::with_capacity(2 * values.len());
+    for value in values {
+        // Writing to a string cannot fail.
+        let _ = write!(text, "{value:02x}");
+    }
+    serializer.serialize_str(&text)
+}
+
+/// An image in the making: rows of differences, so that a rectangle costs a few additions a row.
+#[derive(Clone, Debug)]
+pub(super) struct FluenceSum {
+    differences: Vec<f64>,
+}
+
+impl FluenceSum {
+    pub(super) fn new() -> Self {
+        Self {
+            differences: vec![0.0; CELLS * (CELLS + 2)],
+        }
+    }
+
+    /// Adds an opening that stands for this share of the meterset.
+    pub(super) fn add(&mut self, opening: &Opening, weight: f64) {
+        let place = |cm: f64| ((cm + HALF_CM) / CELL_CM).clamp(0.0, CELLS as f64);
+        for patch in opening.patches.iter().filter(|patch| patch.open != 0.0) {
+            let (x, y) = (patch.x_cm.map(place), patch.y_cm.map(place));
+            let mut row = y[0] as usize;
+            while (row as f64) < y[1] && row < CELLS {
+                let covered =
+                    (y[1].min(row as f64 + 1.0) - y[0].max(row as f64)) * weight * patch.open;
+                self.add_edge(row, x[0], covered);
+                self.add_edge(row, x[1], -covered);
+                row += 1;
+            }
+        }
+    }
+
+    /// From this place on the row holds more by `value`: a running sum of the row then gives each cell its share.
+    fn add_edge(&mut self, row: usize, place: f64, value: f64) {
+        let cell = place as usize;
+        let share = place - cell as f64;
+        let at = row * (CELLS + 2) + cell;
+        if let Some([here, next]) = self.differences.get_mut(at..at + 2) {
+            *here += value * (1.0 - share);
+            *next += value * share;
+        }
+    }
+
+    /// Fluence of every cell, row by row from the lowest y.
+    fn cells(&self) -> Vec<f64> {
+        let mut cells = Vec::with_capacity(CELLS * CELLS);
+        for row in self.differences.chunks(CELLS + 2) {
+            let mut sum = 0.0;
+            cells.extend(row.iter().take(CELLS).map(|difference| {
+                sum += difference;
+                sum
+            }));
+        }
+        cells
+    }
+
+    /// Every open cell: its edges along x and y, cm at the isocentre plane, and its fluence.
+    pub(super) fn open_cells(&self) -> Vec<([f64; 2], [f64; 2], f64)> {
+        let edges = |cell: usize| {
+            let low_cm = cell as f64 * CELL_CM - HALF_CM;
+            [low_cm, low_cm + CELL_CM]
+        };
+        self.cells()
+            .into_iter()
+            .enumerate()
+            .filter(|(_, fluence)| *fluence > 1e-6)
+            .map(|(index, fluence)| (edges(index % CELLS), edges(index / CELLS), fluence))
+            .collect()
+    }
+
+    /// The image.
+    pub(super) fn image(&self) -> FluenceImage {
+        let cells = self.cells();
+        let open = |index: &usize| cells[*index] > 1e-6;
+        let columns = || (0..cells.len()).filter(open).map(|index| index % CELLS);
+        let rows = || (0..cells.len()).filter(open).map(|index| index / CELLS);
+        let (Some(left), Some(right), Some(low), Some(high)) =
+            (columns().min(), columns().max(), rows().min(), rows().max())
+        else {
+            return FluenceImage {
+                cell_cm: CELL_CM,
+                ..FluenceImage::default()
+            };
+        };
+        let values = (low..=high)
+            .flat_map(|row| (left..=right).map(move |column| row * CELLS + column))
+            .map(|index| (cells[index].clamp(0.0, 1.0) * 255.0).round() as u8)
+            .collect();
+        FluenceImage {
+            x_from_cm: left as f64 * CELL_CM - HALF_CM,
+            y_from_cm: low as f64 * CELL_CM - HALF_CM,
+            cell_cm: CELL_CM,
+            columns: right - left + 1,
+            rows: high - low + 1,
+            values,
+        }
+    }
+}

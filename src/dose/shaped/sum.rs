@@ -1,0 +1,414 @@
+//! Adds the moments of a beam up: the dose per MU, and the means over the
+//! meterset from which each factor of the trace is made, so that their product is
+//! the dose and not an approximation of it.
+
+use super::bank::Bank;
+use super::blocks::{BlockShape, cut_blocks};
+use super::depth_track::DepthTrack;
+use super::exposure::{Exposure, expose, open_fluence_beside};
+use super::fluence_image::FluenceSum;
+use super::head::{Heights, aperture_over_jaws};
+use super::moments::{Moment, StepLimits};
+use super::opening::Opening;
+use super::results::ControlPointDose;
+use super::trace::off_axis_depth_cm;
+use crate::beam_model::scatter::{NoKernel, ScatterAtDepth};
+use crate::beam_model::{BeamModel, CouchArc, HeadScatter, OffAxisKind, OutOfRange};
+use crate::dose::aperture::collimator_square;
+use crate::dose::placement::BeamGeometry;
+use crate::dose::{FactorName, FieldModel, RayPoint};
+use crate::quantity::tolerance;
+
+/// Everything that does not change from moment to moment.
+pub(super) struct Standing<'a> {
+    pub(super) model: FieldModel<'a>,
+    pub(super) geometry: &'a BeamGeometry,
+    pub(super) banks: &'a [Bank<'a>],
+    pub(super) blocks: &'a [BlockShape<'a>],
+    pub(super) head: Option<(&'a HeadScatter, Heights)>,
+    pub(super) depths: &'a DepthTrack,
+    pub(super) penumbra_sigma_cm: f64,
+    /// The fluence is compared with that at this distance from the point, cm in its plane.
+    pub(super) margin_cm: f64,
+    pub(super) steps: StepLimits,
+    /// Whether the couch counts by the gantry angle.
+    pub(super) couch: bool,
+}
+
+/// Why the moments could not be added up.
+#[derive(Clone, Debug, PartialEq)]
+pub(super) enum SumError {
+    /// A position, an angle or a depth is missing.
+    Missing(&'static str),
+    /// A table does not reach.
+    Range(FactorName, OutOfRange),
+    /// Too few squares of the depth table reach this depth, cm.
+    Squares(f64),
+}
+
+impl From<NoKernel> for SumError {
+    fn from(why: NoKernel) -> Self {
+        match why {
+            NoKernel::Range(range) => Self::Range(FactorName::ApertureInPhantom, range),
+            NoKernel::Squares(depth_cm) => Self::Squares(depth_cm),
+        }
+    }
+}
+
+/// A dose in its four parts: primary through the opening and through leaves and blocks, scatter likewise.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub(super) struct Parts(pub(super) [f64; 4]);
+
+impl Parts {
+    fn of(exposure: &Exposure, primary: f64) -> Self {
+        Self([
+            exposure.open_fluence * primary,
+            exposure.leak_fluence * primary,
+            exposure.open_scatter,
+            exposure.leak_scatter,
+        ])
+    }
+
+    fn add(&mut self, other: Self, factor: f64) {
+        for (sum, part) in self.0.iter_mut().zip(other.0) {
+            *sum += part * factor;
+        }
+    }
+
+    /// The whole, the scatter with its off-axis weight.
+    pub(super) fn total(self, scatter_weight: f64) -> f64 {
+        let [open, leak, open_scatter, leak_scatter] = self.0;
+        open + leak + scatter_weight * (open_scatter + leak_scatter)
+    }
+
+    /// The four parts, the scatter with its off-axis weight.
+    pub(super) fn weighted(self, scatter_weight: f64) -> [f64; 4] {
+        let [open, leak, open_scatter, leak_scatter] = self.0;
+        [
+            open,
+            leak,
+            scatter_weight * open_scatter,
+            scatter_weight * leak_scatter,
+        ]
+    }
+}
+
+/// Sums over the meterset.
+#[derive(Clone, Debug)]
+pub(super) struct Sums {
+    /// Inverse square.
+    pub(super) inverse_square: f64,
+    /// The same times head scatter.
+    pub(super) head: f64,
+    /// The same times the dose in phantom per unit fluence.
+    pub(super) in_phantom: Parts,
+    /// The same times the off-axis ratio.
+    pub(super) off_axis: Parts,
+    /// The same times the couch.
+    pub(super) couch: Parts,
+    /// Plain means: K(d, 0), Sc of the jaws, effective depth, SPD, off-axis radius, side of the jaws.
+    pub(super) primary: f64,
+    pub(super) jaw_sc: f64,
+    pub(super) effective_cm: f64,
+    pub(super) spd_cm: f64,
+    pub(super) off_axis_cm: f64,
+    pub(super) jaw_side_cm: f64,
+    pub(super) exposure: Exposure,
+    /// Least depth, as the build-up counts it, cm.
+    pub(super) least_depth_cm: f64,
+    /// Open fluence beside the point, in four directions.
+    pub(super) beside: [f64; 4],
+    /// Gap area over gap width of the leaves.
+    pub(super) gap_area_cm2: f64,
+    pub(super) gap_width_cm: f64,
+    /// Share of the meterset with the couch in the beam, and its transmission.
+    pub(super) couch_share: f64,
+    pub(super) fluence: FluenceSum,
+    pub(super) intervals: Vec<ControlPointDose>,
+    pub(super) moments: usize,
+    /// The opening of the last moment with blocks cut out: for a field that stands still, the field.
+    pub(super) opening: Opening,
+    pub(super) ray: RayPoint,
+}
+
+/// Head scatter of the jaws, kept while the jaws stand still.
+struct JawScatter {
+    jaws_cm: [[f64; 2]; 2],
+    side_cm: f64,
+    sc: f64,
+}
+
+/// Adds the moments up.
+pub(super) fn add_up(standing: &Standing<'_>, moments: &[Moment<'_>]) -> Result<Sums, SumError> {
+    let first = moments.first().ok_or(SumError::Missing("a meterset"))?;
+    let mut sums = Sums::new(standing.ray(first)?);
+    let mut opening = Opening::default();
+    let mut jaws: Option<JawScatter> = None;
+    for moment in moments {
+        opening
+            .set(standing.banks, moment.between)
+            .ok_or(SumError::Missing("the position of a leaf or jaw"))?;
+        let ray = standing.ray(moment)?;
+        let at = Instant::new(standing, moment, &mut opening, ray, &mut jaws)?;
+        sums.take(standing, moment, &at, &opening, ray);
+    }
+    sums.opening = opening;
+    Ok(sums)
+}
+
+impl Standing<'_> {
+    fn ray(&self, moment: &Moment<'_>) -> Result<RayPoint, SumError> {
+        let gantry_deg = moment
+            .gantry_deg
+            .ok_or(SumError::Missing("a gantry angle"))?;
+        self.geometry
+            .ray_at(gantry_deg)
+            .ok_or(SumError::Missing("the place of the point below the source"))
+    }
+
+    fn beam(&self) -> &BeamModel {
+        self.model.beam
+    }
+
+    fn couch_at(&self, moment: &Moment<'_>) -> Option<CouchArc> {
+        let gantry_deg = moment.gantry_deg?;
+        self.couch
+            .then(|| self.beam().couch_arc(gantry_deg.rem_euclid(360.0)))
+            .flatten()
+    }
+}
+
+/// What holds at one moment.
+struct Instant<'a> {
+    kernel: ScatterAtDepth<'a>,
+    exposure: Exposure,
+    inverse_square: f64,
+    jaw_sc: f64,
+    jaw_side_cm: f64,
+    aperture_over_jaws: f64,
+    off_axis_ratio: f64,
+    couch: Option<CouchArc>,
+    effective_cm: f64,
+    least_depth_cm: f64,
+}
+
+impl<'a> Instant<'a> {
+    fn new(
+        standing: &'a Standing<'_>,
+        moment: &Moment<'_>,
+        opening: &mut Opening,
+        ray: RayPoint,
+        jaws: &mut Option<JawScatter>,
+    ) -> Result<Self, SumError> {
+        let beam = standing.beam();
+        let depth = standing
+            .depths
+            .at(moment)
+            .ok_or(SumError::Missing("the depth at a control point"))?;
+        let tpr_depth_cm = match beam.off_axis.kind {
+            OffAxisKind::InAir => depth.effective_cm,
+            OffAxisKind::InWater => depth.effective_cm * ray.cosine(),
+        };
+        let kernel = beam.scatter_at(tpr_depth_cm)?;
+        let jaw = jaw_scatter(standing, opening, jaws)?;
+        let (jaw_side_cm, jaw_sc) = (jaw.side_cm, jaw.sc);
+        let transmission = standing
+            .banks
+            .iter()
+            .map(|bank| bank.model.transmission)
+            .product();
+        let aperture_over_jaws = standing.head.as_ref().map_or(1.0, |(head, heights)| {
+            aperture_over_jaws(head, heights, opening, ray, (jaw_side_cm, transmission))
+        });
+        cut_blocks(opening, standing.blocks, standing.steps.strip_cm);
+        let radius_cm = ray.off_axis_cm();
+        let off_axis_ratio = if radius_cm < tolerance::POSITION_CM {
+            1.0
+        } else {
+            let at_cm = off_axis_depth_cm(depth, tpr_depth_cm, beam, ray);
+            beam.off_axis_ratio(radius_cm, at_cm)
+                .map_err(|range| SumError::Range(FactorName::OffAxisRatio, range))?
+                .value
+        };
+        Ok(Self {
+            exposure: expose(opening, ray, &kernel, standing.penumbra_sigma_cm),
+            kernel,
+            inverse_square: (beam.output.source_distance_cm / ray.spd_cm).powi(2),
+            jaw_sc,
+            jaw_side_cm,
+            aperture_over_jaws,
+            off_axis_ratio,
+            couch: standing.couch_at(moment),
+            effective_cm: depth.effective_cm,
+            least_depth_cm: depth
+                .perpendicular_cm
+                .map_or(tpr_depth_cm, |depth_cm| depth_cm.min(tpr_depth_cm)),
+        })
+    }
+}
+
+fn jaw_scatter<'j>(
+    standing: &Standing<'_>,
+    opening: &Opening,
+    known: &'j mut Option<JawScatter>,
+) -> Result<&'j JawScatter, SumError> {
+    let stale = known
+        .as_ref()
+        .is_none_or(|known| known.jaws_cm != opening.jaws_cm);
+    if stale {
+        let [x, y] = opening.jaws_cm.map(|jaw| jaw[1] - jaw[0]);
+        let model = standing.model;
+        // Closed jaws give no head scatter of their own: what gets past them is leak.
+        let jaw = if x <= tolerance::POSITION_CM || y <= tolerance::POSITION_CM {
+            JawScatter {
+                jaws_cm: opening.jaws_cm,
+                side_cm: 0.0,
+                sc: 1.0,
+            }
+        } else {
+            let square = collimator_square(x, y, model.upper_jaws, model.beam.exchange_k);
+            let sc = model
+                .beam
+                .sc(square)
+                .map_err(|range| SumError::Range(FactorName::CollimatorScatter, range))?;
+            JawScatter {
+                jaws_cm: opening.jaws_cm,
+                side_cm: square.side_cm(),
+                sc: sc.value,
+            }
+        };
+        *known = Some(jaw);
+    }
+    known.as_ref().ok_or(SumError::Missing("the jaws"))
+}
+
+impl Sums {
+    fn new(ray: RayPoint) -> Self {
+        Self {
+            inverse_square: 0.0,
+            head: 0.0,
+            in_phantom: Parts::default(),
+            off_axis: Parts::default(),
+            couch: Parts::default(),
+            primary: 0.0,
+            jaw_sc: 0.0,
+            effective_cm: 0.0,
+            spd_cm: 0.0,
+            off_axis_cm: 0.0,
+            jaw_side_cm: 0.0,
+            exposure: Exposure::default(),
+            least_depth_cm: f64::INFINITY,
+            beside: [0.0; 4],
+            gap_area_cm2: 0.0,
+            gap_width_cm: 0.0,
+            couch_share: 0.0,
+            fluence: FluenceSum::new(),
+            intervals: Vec::new(),
+            moments: 0,
+            opening: Opening::default(),
+            ray,
+        }
+    }
+
+    fn take(
+        &mut self,
+        standing: &Standing<'_>,
+        moment: &Moment<'_>,
+        at: &Instant<'_>,
+        opening: &Opening,
+        ray: RayPoint,
+    ) {
+        let weight = moment.weight;
+        let primary = at.kernel.primary();
+        let couch = at.couch.map_or(1.0, |arc| arc.transmission);
+        let to_here = weight * at.inverse_square;
+        self.inverse_square += to_here;
+        let to_here = to_here * at.jaw_sc * at.aperture_over_jaws;
+        self.head += to_here;
+        let parts = Parts::of(&at.exposure, primary);
+        self.in_phantom.add(parts, to_here);
+        self.off_axis.add(parts, to_here * at.off_axis_ratio);
+        self.couch.add(parts, to_here * at.off_axis_ratio * couch);
+        self.primary += weight * primary;
+        self.jaw_sc += weight * at.jaw_sc;
+        self.effective_cm += weight * at.effective_cm;
+        self.spd_cm += weight * ray.spd_cm;
+        self.off_axis_cm += weight * ray.off_axis_cm();
+        self.jaw_side_cm += weight * at.jaw_side_cm;
+        self.exposure.open_fluence += weight * at.exposure.open_fluence;
+        self.exposure.leak_fluence += weight * at.exposure.leak_fluence;
+        self.exposure.open_scatter += weight * at.exposure.open_scatter;
+        self.exposure.leak_scatter += weight * at.exposure.leak_scatter;
+        self.least_depth_cm = self.least_depth_cm.min(at.least_depth_cm);
+        let margin_cm = standing.margin_cm;
+        let shifts = [
+            [margin_cm, 0.0],
+            [-margin_cm, 0.0],
+            [0.0, margin_cm],
+            [0.0, -margin_cm],
+        ];
+        for (sum, shift_cm) in self.beside.iter_mut().zip(shifts) {
+            *sum +=
+                weight * open_fluence_beside(opening, ray, shift_cm, standing.penumbra_sigma_cm);
+        }
+        self.gap_area_cm2 += weight * opening.gap_area_cm2;
+        self.gap_width_cm += weight * opening.gap_width_cm;
+        if at.couch.is_some() {
+            self.couch_share += weight;
+        }
+        self.fluence.add(opening, weight);
+        self.moments += 1;
+        self.note_interval(
+            standing,
+            moment,
+            at,
+            to_here * at.off_axis_ratio * couch,
+            parts,
+            ray,
+        );
+    }
+
+    fn note_interval(
+        &mut self,
+        standing: &Standing<'_>,
+        moment: &Moment<'_>,
+        at: &Instant<'_>,
+        factor: f64,
+        parts: Parts,
+        ray: RayPoint,
+    ) {
+        let mut dose = Parts::default();
+        dose.add(parts, factor);
+        // Without the off-axis weight of the scatter, which is known at the end only.
+        let dose_per_mu_cgy = dose.total(1.0) * standing.beam().output.dose_per_mu_cgy;
+        let head_scatter = at.jaw_sc * at.aperture_over_jaws;
+        let fluence = at.exposure.open_fluence + at.exposure.leak_fluence;
+        let percent = 100.0 * moment.weight;
+        match self.intervals.last_mut() {
+            Some(last) if last.from_control_point == moment.start_index => {
+                let (old, new) = (last.meterset_percent, percent);
+                let mean = |a: f64, b: f64| (a * old + b * new) / (old + new);
+                last.effective_depth_cm = mean(last.effective_depth_cm, at.effective_cm);
+                last.spd_cm = mean(last.spd_cm, ray.spd_cm);
+                last.point_fluence = mean(last.point_fluence, fluence);
+                last.head_scatter = mean(last.head_scatter, head_scatter);
+                last.gantry_deg = last
+                    .gantry_deg
+                    .zip(moment.gantry_deg)
+                    .map(|(a, b)| mean(a, b));
+                last.meterset_percent = old + new;
+                last.dose_per_mu_cgy += dose_per_mu_cgy;
+            }
+            _ => self.intervals.push(ControlPointDose {
+                from_control_point: moment.start_index,
+                meterset_percent: percent,
+                gantry_deg: moment.gantry_deg,
+                effective_depth_cm: at.effective_cm,
+                spd_cm: ray.spd_cm,
+                point_fluence: fluence,
+                head_scatter,
+                dose_per_mu_cgy,
+            }),
+        }
+    }
+}

@@ -37,8 +37,8 @@ pub struct BeamModel {
     pub off_axis: OffAxis,
     /// Exchange coefficient k of the collimator: c = (1+k) L U / (k L + U), U the upper and L the lower opening.
     pub exchange_k: f64,
-    /// Gaussian sigma of the primary's penumbra in the plane of the point, cm; `None` when not given.
-    pub penumbra_sigma_cm: Option<f64>,
+    /// The primary's penumbra; `None` when not given.
+    pub penumbra: Option<Penumbra>,
     /// Source to the plane that head scatter seems to come from, cm; `None` when not given.
     pub extra_focal_distance_cm: Option<f64>,
     /// Tray transmission by tray ID.
@@ -116,6 +116,17 @@ pub struct CouchArc {
     pub to_deg: f64,
     /// Transmission, a share.
     pub transmission: f64,
+}
+
+/// How the primary is blurred by source size and electron range: one Gaussian, or two for an edge with a tail.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize)]
+pub struct Penumbra {
+    /// Sigma in the plane of the point, cm.
+    pub sigma_cm: f64,
+    /// Share of the tail, 0 to 0.5.
+    pub tail_share: f64,
+    /// The tail's sigma, cm; at least `sigma_cm`.
+    pub tail_sigma_cm: f64,
 }
 
 /// 1-sigma uncertainties of a beam's data, per cent of dose.

@@ -8,7 +8,8 @@ use super::machine_file::{BeamEntry, CouchEntry, DepthKindEntry, NormalisedAt, R
 use super::model_folder::ModelFolder;
 use super::scatter::ScatterKernel;
 use super::{
-    BeamModel, BeamUncertainty, CouchArc, ModelError, ProofPoint, ReferenceOutput, TableKind,
+    BeamModel, BeamUncertainty, CouchArc, ModelError, Penumbra, ProofPoint, ReferenceOutput,
+    TableKind,
 };
 use crate::plan::RadiationType;
 use crate::quantity::tolerance;
@@ -85,6 +86,8 @@ pub(super) fn load_beam(
             ),
         ));
     }
+    let penumbra = penumbra(&entry)
+        .map_err(|message| ModelError::setting(&path, key("penumbra_tail_share"), message))?;
     let uncertainty = BeamUncertainty {
         output_percent: entry.uncertainty.output_percent,
         depth_table_percent: entry.uncertainty.depth_table_percent,
@@ -115,7 +118,7 @@ pub(super) fn load_beam(
         output_factors,
         off_axis,
         exchange_k: entry.exchange_k,
-        penumbra_sigma_cm: entry.penumbra_sigma_cm,
+        penumbra,
         extra_focal_distance_cm: entry.extra_focal_distance_cm,
         trays,
         couch,
@@ -125,6 +128,28 @@ pub(super) fn load_beam(
         kernel,
         label: entry.label,
     })
+}
+
+/// One Gaussian, or two: a tail needs its share, its sigma and a main part that is narrower.
+fn penumbra(entry: &BeamEntry) -> Result<Option<Penumbra>, &'static str> {
+    let tail = (entry.penumbra_tail_share, entry.penumbra_tail_sigma_cm);
+    match (entry.penumbra_sigma_cm, tail) {
+        (sigma_cm, (None, None)) => Ok(sigma_cm.map(|sigma_cm| Penumbra {
+            sigma_cm,
+            tail_share: 0.0,
+            tail_sigma_cm: sigma_cm,
+        })),
+        (Some(sigma_cm), (Some(tail_share), Some(tail_sigma_cm))) if tail_sigma_cm >= sigma_cm => {
+            Ok(Some(Penumbra {
+                sigma_cm,
+                tail_share,
+                tail_sigma_cm,
+            }))
+        }
+        _ => Err(
+            "a tail is given with penumbra_sigma_cm, penumbra_tail_share and a penumbra_tail_sigma_cm that is not smaller",
+        ),
+    }
 }
 
 fn couch_arc(entry: &CouchEntry) -> CouchArc {

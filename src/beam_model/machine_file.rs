@@ -6,9 +6,9 @@ use serde::Deserialize;
 
 use super::machine_value::{
     date, device_distance, device_travel, exchange_k, extra_focal, gantry, jaw_transmission,
-    leaf_end_offset, open_transmission, opening, penumbra, photon_energy, positive_depth,
-    proof_dose, reference_output, source_axis_distance, source_surface_distance, spread,
-    surface_distance, text, texts, transmission,
+    leaf_end_offset, open_transmission, opening, penumbra, penumbra_share, photon_energy,
+    positive_depth, proof_dose, reference_output, source_axis_distance, source_surface_distance,
+    spread, surface_distance, text, texts, transmission,
 };
 use super::{DataOrigin, DepthInterpolation, JawAxis, OffAxisKind};
 
@@ -136,6 +136,10 @@ pub(super) struct BeamEntry {
     pub(super) exchange_k: f64,
     #[serde(default, deserialize_with = "penumbra")]
     pub(super) penumbra_sigma_cm: Option<f64>,
+    #[serde(default, deserialize_with = "penumbra_share")]
+    pub(super) penumbra_tail_share: Option<f64>,
+    #[serde(default, deserialize_with = "penumbra")]
+    pub(super) penumbra_tail_sigma_cm: Option<f64>,
     #[serde(default, deserialize_with = "extra_focal")]
     pub(super) extra_focal_distance_cm: Option<f64>,
     pub(super) reference: ReferenceEntry,

@@ -121,6 +121,7 @@ optional! {
     device_travel: travel;
     jaw_transmission: transmission;
     penumbra: penumbra_sigma;
+    penumbra_share: penumbra_tail;
     extra_focal: extra_focal_distance;
 }
 
@@ -135,6 +136,8 @@ bounded! {
     leaf_end_offset: -0.2, 0.5, "cm";
     /// Gaussian widths of 0.1 to 0.4 cm fit measured penumbras (common practice); wider is a slip of unit.
     penumbra_sigma: 0.001, 1.0, "cm";
+    /// More than half of it would be the main part.
+    penumbra_tail: 0.0, 0.5, "of the penumbra";
     /// Flattening filters and their like sit between target and monitor chamber (common practice).
     extra_focal_distance: 2.0, 25.0, "cm";
     gantry: 0.0, 360.0, "degrees";

@@ -21,8 +21,8 @@ mod table;
 mod table_file;
 
 pub use beam::{
-    BeamModel, BeamUncertainty, CouchArc, OffAxis, OffAxisKind, OutputTable, ReferenceOutput,
-    TableKind,
+    BeamModel, BeamUncertainty, CouchArc, OffAxis, OffAxisKind, OutputTable, Penumbra,
+    ReferenceOutput, TableKind,
 };
 pub use check::{ModelFinding, ModelSeverity, TablePlace, check_machine, tpr20_10_from_pdd20_10};
 pub use derive::{DerivedTable, derivable_grid, derive_table};

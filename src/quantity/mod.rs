@@ -16,7 +16,7 @@ pub mod tolerance;
 pub use fingerprint::{hex, sha256_hex};
 pub use frame::{Collimator, Fixed, Frame, Gantry, Patient, Point, Vector};
 pub use given::Given;
-pub use normal::{normal_between, normal_share};
+pub use normal::{normal_between, normal_share, normal_share_integral};
 pub use range::{CredibleRange, Quantity};
 pub use square::{
     CollimatorSquare, PointSquare, ReferenceDepthSquare, SurfaceSquare, sterling_side_cm,

@@ -35,6 +35,17 @@ pub fn normal_share(sigmas: f64) -> f64 {
     if sigmas < 0.0 { 1.0 - share } else { share }
 }
 
+/// Integral of [`normal_share`] from minus infinity: u N(u) + exp(-u^2/2)/sqrt(2 pi).
+#[must_use]
+#[inline]
+pub fn normal_share_integral(sigmas: f64) -> f64 {
+    if sigmas.abs() >= END_SIGMA {
+        return sigmas.max(0.0);
+    }
+    const PER_ROOT_TWO_PI: f64 = 0.398_942_280_401_432_7;
+    sigmas * normal_share(sigmas) + PER_ROOT_TWO_PI * (-0.5 * sigmas * sigmas).exp()
+}
+
 /// Share between two bounds of a distribution of this sigma around 0; 0 when they are the wrong way round.
 #[must_use]
 #[inline]
@@ -44,7 +55,19 @@ pub fn normal_between([low, high]: [f64; 2], sigma: f64) -> f64 {
 
 #[cfg(test)]
 mod tests {
-    use super::{normal_between, normal_share};
+    use super::{normal_between, normal_share, normal_share_integral};
+
+    /// By the trapezoidal rule over the shares.
+    #[test]
+    fn verify_the_integral_of_the_share() {
+        let step = 0.001;
+        let sum: f64 = (0..7000)
+            .map(|index| normal_share(-6.0 + (f64::from(index) + 0.5) * step) * step)
+            .sum();
+        assert!((normal_share_integral(1.0) - sum).abs() < 1e-5);
+        assert_eq!(normal_share_integral(7.0), 7.0);
+        assert_eq!(normal_share_integral(-7.0), 0.0);
+    }
 
     /// Tables of the normal distribution: 0.8413, 0.9772, 0.99865 at 1, 2, 3 sigma.
     #[test]

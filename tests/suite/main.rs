@@ -24,3 +24,5 @@ mod report;
 mod sample_plans;
 /// The site file.
 mod settings;
+/// Shaped and moving fields against the world outside.
+mod shaped;

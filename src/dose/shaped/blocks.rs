@@ -100,6 +100,7 @@ fn cut_strip(whole: &[Patch], blocks: &[BlockShape<'_>], strip_cm: [f64; 2], cut
                 y_cm: strip_cm,
                 open,
                 leak,
+                ..Patch::default()
             });
         }
     }
@@ -139,7 +140,7 @@ mod tests {
                 x_cm: [-5.0, 5.0],
                 y_cm: [-5.0, 5.0],
                 open: 1.0,
-                leak: 0.0,
+                ..Patch::default()
             }],
             ..Opening::default()
         }

@@ -72,7 +72,7 @@ fn standing<'a>(
 ) -> Option<Standing<'a>> {
     let model = field.model.beam;
     let name = &field.machine.name;
-    let Some(penumbra_sigma_cm) = model.penumbra_sigma_cm else {
+    let Some(penumbra) = model.penumbra else {
         result.obstacles.push(model_obstacle(format!(
             "the beam model {name} gives no penumbra_sigma_cm for {}: shaped and moving fields need it",
             model.label
@@ -100,14 +100,18 @@ fn standing<'a>(
             }
         }
     };
+    let upper_jaws = field.machine.collimation.jaw(field.machine.upper_jaws);
     Some(Standing {
+        jaw_height_cm: upper_jaws
+            .and_then(|jaw| jaw.source_distance_cm)
+            .unwrap_or_default(),
         model: field.model,
         geometry: field.geometry,
         banks,
         blocks,
         head,
         depths: field.depths,
-        penumbra_sigma_cm,
+        penumbra,
         margin_cm: field.site.technical.edge_margin_cm,
         steps: field.steps,
         couch: true,
@@ -206,6 +210,7 @@ fn conclude(
         equivalent_side_cm,
         limits: &field.site.technical,
         one_aperture: one_aperture(result.technique, sums),
+        scatter_weight,
     }));
     let (sigma_cm, name) = field.depth_sigma;
     result.spread = Some(spread_of(

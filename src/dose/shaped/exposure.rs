@@ -3,9 +3,10 @@
 //! leaves and blocks. Head scatter, distance and depth are others' work.
 
 use super::opening::{Opening, Patch};
+use crate::beam_model::Penumbra;
 use crate::beam_model::scatter::ScatterAtDepth;
 use crate::dose::RayPoint;
-use crate::quantity::normal_between;
+use crate::quantity::{normal_share, normal_share_integral};
 
 /// Beyond this many sigmas an edge does not reach the point.
 const FAR_SIGMAS: f64 = 6.0;
@@ -23,20 +24,20 @@ pub(super) struct Exposure {
     pub(super) leak_scatter: f64,
 }
 
-/// The exposure of the point on `ray`; `sigma_cm` is the penumbra's in the point's plane.
+/// The exposure of the point on `ray`.
 pub(super) fn expose(
     opening: &Opening,
     ray: RayPoint,
     kernel: &ScatterAtDepth<'_>,
-    sigma_cm: f64,
+    penumbra: &Penumbra,
 ) -> Exposure {
     let mut sum = Exposure::default();
     for patch in &opening.patches {
-        let (x_cm, y_cm) = seen_from(patch, ray);
-        let scatter = kernel.rectangle(x_cm, y_cm);
+        let (x, y) = seen_from(patch, ray);
+        let scatter = kernel.rectangle(x.at_cm, y.at_cm);
         sum.open_scatter += patch.open * scatter;
         sum.leak_scatter += patch.leak * scatter;
-        let fluence = blurred(x_cm, y_cm, sigma_cm);
+        let fluence = blurred(x, y, penumbra);
         if fluence > 0.0 {
             sum.open_fluence += patch.open * fluence;
             sum.leak_fluence += patch.leak * fluence;
@@ -50,36 +51,72 @@ pub(super) fn open_fluence_beside(
     opening: &Opening,
     ray: RayPoint,
     shift_cm: [f64; 2],
-    sigma_cm: f64,
+    penumbra: &Penumbra,
 ) -> f64 {
     let patches = opening.patches.iter().filter(|patch| patch.open != 0.0);
     patches
         .map(|patch| {
-            let (x_cm, y_cm) = seen_from(patch, ray);
-            let x_cm = x_cm.map(|edge| edge - shift_cm[0]);
-            let y_cm = y_cm.map(|edge| edge - shift_cm[1]);
-            patch.open * blurred(x_cm, y_cm, sigma_cm)
+            let (mut x, mut y) = seen_from(patch, ray);
+            x.at_cm = x.at_cm.map(|edge| edge - shift_cm[0]);
+            y.at_cm = y.at_cm.map(|edge| edge - shift_cm[1]);
+            patch.open * blurred(x, y, penumbra)
         })
         .sum()
 }
 
-/// A rectangle's edges from the point, in the point's plane.
+/// Two edges of a rectangle from the point, in the point's plane, and how far each moves in the step, either way.
+#[derive(Clone, Copy)]
+struct Sides {
+    at_cm: [f64; 2],
+    travel_cm: [f64; 2],
+}
+
 #[inline]
-fn seen_from(patch: &Patch, ray: RayPoint) -> ([f64; 2], [f64; 2]) {
+fn seen_from(patch: &Patch, ray: RayPoint) -> (Sides, Sides) {
     let scale = ray.scale();
-    let [x, y] = ray.projected_cm;
+    let [x_cm, y_cm] = ray.projected_cm;
+    let sides = |edges_cm: [f64; 2], travel_cm: [f64; 2], at_cm: f64| Sides {
+        at_cm: edges_cm.map(|edge_cm| (edge_cm - at_cm) * scale),
+        travel_cm: travel_cm.map(|travel_cm| travel_cm * scale),
+    };
     (
-        patch.x_cm.map(|edge| (edge - x) * scale),
-        patch.y_cm.map(|edge| (edge - y) * scale),
+        sides(patch.x_cm, patch.x_travel_cm, x_cm),
+        sides(patch.y_cm, patch.y_travel_cm, y_cm),
     )
 }
 
-/// Share of a Gaussian around the point that lies on the rectangle.
+/// Share of the penumbra's Gaussians around the point that lies on the rectangle.
 #[inline]
-fn blurred(x_cm: [f64; 2], y_cm: [f64; 2], sigma_cm: f64) -> f64 {
-    let far_cm = FAR_SIGMAS * sigma_cm;
-    if y_cm[0] > far_cm || y_cm[1] < -far_cm || x_cm[0] > far_cm || x_cm[1] < -far_cm {
+fn blurred(x: Sides, y: Sides, penumbra: &Penumbra) -> f64 {
+    let far_cm = FAR_SIGMAS * penumbra.tail_sigma_cm;
+    let out_of_reach = |side: Sides| {
+        side.at_cm[0] - side.travel_cm[0] > far_cm || side.at_cm[1] + side.travel_cm[1] < -far_cm
+    };
+    if out_of_reach(y) || out_of_reach(x) {
         return 0.0;
     }
-    normal_between(x_cm, sigma_cm) * normal_between(y_cm, sigma_cm)
+    let gaussian = |sigma_cm| between(x, sigma_cm) * between(y, sigma_cm);
+    let main = gaussian(penumbra.sigma_cm);
+    if penumbra.tail_share == 0.0 {
+        return main;
+    }
+    main + (gaussian(penumbra.tail_sigma_cm) - main) * penumbra.tail_share
+}
+
+/// Share of a Gaussian between two edges, its mean over the step: a sharp penumbra is finer than a step, so its
+/// passage is integrated and not sampled.
+#[inline]
+fn between(side: Sides, sigma_cm: f64) -> f64 {
+    let below = |index: usize| {
+        let (at_cm, travel_cm) = (side.at_cm[index], side.travel_cm[index]);
+        if travel_cm < 1e-3 * sigma_cm {
+            return normal_share(at_cm / sigma_cm);
+        }
+        let (low, high) = (
+            (at_cm - travel_cm) / sigma_cm,
+            (at_cm + travel_cm) / sigma_cm,
+        );
+        (normal_share_integral(high) - normal_share_integral(low)) / (high - low)
+    };
+    (below(1) - below(0)).max(0.0)
 }

@@ -75,6 +75,7 @@ pub(super) fn moments<'a>(
                     start: interval.start,
                     end: interval.end,
                     share,
+                    step: 1.0 / steps,
                 },
                 weight: interval.weight / total / steps,
                 gantry_deg: start_deg.map(|start_deg| start_deg + turn_deg * share),

@@ -11,12 +11,16 @@ const FIELD_LIMIT_CM: f64 = 20.0;
 
 /// A rectangle of the collimator system at the isocentre plane with its in-air fluence. Rectangles
 /// overlap; the fluence at a place is the sum over those that hold it.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub(super) struct Patch {
-    /// From, to along x, cm.
+    /// From, to along x in the middle of the step, cm.
     pub(super) x_cm: [f64; 2],
-    /// From, to along y, cm.
+    /// From, to along y in the middle of the step, cm.
     pub(super) y_cm: [f64; 2],
+    /// How far the edges along x move in the step, either way, cm.
+    pub(super) x_travel_cm: [f64; 2],
+    /// How far the edges along y move in the step, either way, cm.
+    pub(super) y_travel_cm: [f64; 2],
     /// Fluence through the opening.
     pub(super) open: f64,
     /// Fluence through leaves and blocks.
@@ -36,11 +40,18 @@ pub(super) struct Opening {
     pub(super) gap_width_cm: f64,
 }
 
+/// Two opposed edges in the middle of a step, and how far each moves in it, either way, cm.
+#[derive(Clone, Copy)]
+struct Edges {
+    at_cm: [f64; 2],
+    travel_cm: [f64; 2],
+}
+
 /// A leaf pair's gap inside the jaws.
 #[derive(Clone, Copy)]
 struct Gap {
-    along: [f64; 2],
-    across: [f64; 2],
+    along: Edges,
+    across: Edges,
 }
 
 /// Where jaws and leaves stand between two control points.
@@ -48,18 +59,27 @@ struct Gap {
 pub(super) struct Between<'a> {
     pub(super) start: &'a ControlPoint,
     pub(super) end: &'a ControlPoint,
-    /// 0 at the start, 1 at the end.
+    /// Middle of the step: 0 at the start, 1 at the end.
     pub(super) share: f64,
+    /// Length of the step, as a share of the way from start to end.
+    pub(super) step: f64,
 }
 
 impl Between<'_> {
-    fn jaws(&self, axis: LeafAxis) -> Option<[f64; 2]> {
+    fn edges(&self, start: [f64; 2], end: [f64; 2]) -> Edges {
+        Edges {
+            at_cm: [0, 1].map(|side| start[side] + (end[side] - start[side]) * self.share),
+            travel_cm: [0, 1].map(|side| (end[side] - start[side]).abs() * self.step / 2.0),
+        }
+    }
+
+    fn jaws(&self, axis: LeafAxis) -> Option<Edges> {
         let jaws = |point: &ControlPoint| match axis {
             LeafAxis::X => point.jaws_x_cm.value().copied(),
             LeafAxis::Y => point.jaws_y_cm.value().copied(),
         };
         let (start, end) = (jaws(self.start)?, jaws(self.end)?);
-        Some([0, 1].map(|side| start[side] + (end[side] - start[side]) * self.share))
+        Some(self.edges(start, end))
     }
 }
 
@@ -71,19 +91,16 @@ impl Opening {
         self.gap_area_cm2 = 0.0;
         self.gap_width_cm = 0.0;
         let jaws = [at.jaws(LeafAxis::X), at.jaws(LeafAxis::Y)];
-        let limits = jaws.map(|jaws| jaws.unwrap_or([-FIELD_LIMIT_CM, FIELD_LIMIT_CM]));
-        self.jaws_cm = limits;
+        let limits = jaws.map(|jaws| jaws.unwrap_or(Edges::FIELD_LIMIT));
+        self.jaws_cm = limits.map(|limit| limit.at_cm);
         let closed = limits
             .iter()
-            .any(|limit| limit[1] - limit[0] <= tolerance::POSITION_CM);
+            .any(|limit| limit.width_cm() <= tolerance::POSITION_CM);
         match banks {
             _ if closed => {}
-            [] => self.patches.push(Patch {
-                x_cm: limits[0],
-                y_cm: limits[1],
-                open: 1.0,
-                leak: 0.0,
-            }),
+            [] => self
+                .patches
+                .push(Patch::new(limits[0], limits[1], (1.0, 0.0))),
             [bank] => {
                 let through = bank.model.transmission;
                 self.push_background(limits, through);
@@ -100,33 +117,23 @@ impl Opening {
         Some(())
     }
 
-    fn push_background(&mut self, limits: [[f64; 2]; 2], leak: f64) {
-        self.patches.push(Patch {
-            x_cm: limits[0],
-            y_cm: limits[1],
-            open: 0.0,
-            leak,
-        });
+    fn push_background(&mut self, limits: [Edges; 2], leak: f64) {
+        self.patches
+            .push(Patch::new(limits[0], limits[1], (0.0, leak)));
     }
 
     fn push_gaps(
         &mut self,
         bank: &Bank<'_>,
         at: Between<'_>,
-        limits: [[f64; 2]; 2],
+        limits: [Edges; 2],
         (open, leak): (f64, f64),
     ) -> Option<()> {
         for_each_gap(bank, at, limits, |gap| {
-            let (x_cm, y_cm) = gap.sides(bank.axis);
-            self.patches.push(Patch {
-                x_cm,
-                y_cm,
-                open,
-                leak,
-            });
-            let width_cm = gap.across[1] - gap.across[0];
-            self.gap_area_cm2 += width_cm * (gap.along[1] - gap.along[0]);
-            self.gap_width_cm += width_cm;
+            let (x, y) = gap.sides(bank.axis);
+            self.patches.push(Patch::new(x, y, (open, leak)));
+            self.gap_area_cm2 += gap.across.width_cm() * gap.along.width_cm();
+            self.gap_width_cm += gap.across.width_cm();
         })
     }
 
@@ -135,7 +142,7 @@ impl Opening {
         &mut self,
         banks: [&Bank<'_>; 2],
         at: Between<'_>,
-        limits: [[f64; 2]; 2],
+        limits: [Edges; 2],
     ) -> Option<()> {
         let [t1, t2] = banks.map(|bank| bank.model.transmission);
         self.push_background(limits, t1 * t2);
@@ -149,21 +156,15 @@ impl Opening {
         for one in first..second {
             for two in second..end {
                 let (one, two) = (self.patches[one], self.patches[two]);
-                let x_cm = common(one.x_cm, two.x_cm);
-                let y_cm = common(one.y_cm, two.y_cm);
-                if x_cm[1] > x_cm[0] && y_cm[1] > y_cm[0] {
-                    self.patches.push(Patch {
-                        x_cm,
-                        y_cm,
-                        open: 1.0,
-                        leak: both_leak,
-                    });
-                    let (along, across) = match banks[0].axis {
-                        LeafAxis::X => (x_cm, y_cm),
-                        LeafAxis::Y => (y_cm, x_cm),
+                let (x, y) = (one.x().and(two.x()), one.y().and(two.y()));
+                if x.width_cm() > 0.0 && y.width_cm() > 0.0 {
+                    self.patches.push(Patch::new(x, y, (1.0, both_leak)));
+                    let across_cm = match banks[0].axis {
+                        LeafAxis::X => y.width_cm(),
+                        LeafAxis::Y => x.width_cm(),
                     };
-                    self.gap_area_cm2 += (along[1] - along[0]) * (across[1] - across[0]);
-                    self.gap_width_cm += across[1] - across[0];
+                    self.gap_area_cm2 += x.width_cm() * y.width_cm();
+                    self.gap_width_cm += across_cm;
                 }
             }
         }
@@ -192,12 +193,68 @@ impl Opening {
     }
 }
 
-fn common(a: [f64; 2], b: [f64; 2]) -> [f64; 2] {
-    [a[0].max(b[0]), a[1].min(b[1])]
+impl Edges {
+    const FIELD_LIMIT: Self = Self::still([-FIELD_LIMIT_CM, FIELD_LIMIT_CM]);
+
+    const fn still(at_cm: [f64; 2]) -> Self {
+        Self {
+            at_cm,
+            travel_cm: [0.0; 2],
+        }
+    }
+
+    fn width_cm(&self) -> f64 {
+        self.at_cm[1] - self.at_cm[0]
+    }
+
+    /// What is between both pairs of edges.
+    fn and(self, other: Self) -> Self {
+        let low = if self.at_cm[0] >= other.at_cm[0] {
+            self
+        } else {
+            other
+        };
+        let high = if self.at_cm[1] <= other.at_cm[1] {
+            self
+        } else {
+            other
+        };
+        Self {
+            at_cm: [low.at_cm[0], high.at_cm[1]],
+            travel_cm: [low.travel_cm[0], high.travel_cm[1]],
+        }
+    }
+}
+
+impl Patch {
+    const fn new(x: Edges, y: Edges, (open, leak): (f64, f64)) -> Self {
+        Self {
+            x_cm: x.at_cm,
+            y_cm: y.at_cm,
+            x_travel_cm: x.travel_cm,
+            y_travel_cm: y.travel_cm,
+            open,
+            leak,
+        }
+    }
+
+    const fn x(&self) -> Edges {
+        Edges {
+            at_cm: self.x_cm,
+            travel_cm: self.x_travel_cm,
+        }
+    }
+
+    const fn y(&self) -> Edges {
+        Edges {
+            at_cm: self.y_cm,
+            travel_cm: self.y_travel_cm,
+        }
+    }
 }
 
 impl Gap {
-    const fn sides(&self, axis: LeafAxis) -> ([f64; 2], [f64; 2]) {
+    const fn sides(&self, axis: LeafAxis) -> (Edges, Edges) {
         match axis {
             LeafAxis::X => (self.along, self.across),
             LeafAxis::Y => (self.across, self.along),
@@ -210,7 +267,7 @@ impl Gap {
 fn for_each_gap(
     bank: &Bank<'_>,
     at: Between<'_>,
-    limits: [[f64; 2]; 2],
+    limits: [Edges; 2],
     mut take: impl FnMut(Gap),
 ) -> Option<()> {
     let positions = |point: &'_ ControlPoint| {
@@ -231,20 +288,24 @@ fn for_each_gap(
     };
     let offset_cm = bank.model.leaf_end_offset_cm;
     for pair in 0..pairs {
-        let width = common(
-            [bank.boundaries_cm[pair], bank.boundaries_cm[pair + 1]],
-            across,
+        let width =
+            Edges::still([bank.boundaries_cm[pair], bank.boundaries_cm[pair + 1]]).and(across);
+        if width.width_cm() <= 0.0 {
+            continue;
+        }
+        let tips = at.edges(
+            [start[pair], start[pair + pairs]],
+            [end[pair], end[pair + pairs]],
         );
-        if width[1] - width[0] <= 0.0 {
+        if tips.width_cm() <= tolerance::POSITION_CM {
             continue;
         }
-        let tip = |leaf: usize| start[leaf] + (end[leaf] - start[leaf]) * at.share;
-        let tips = [tip(pair), tip(pair + pairs)];
-        if tips[1] - tips[0] <= tolerance::POSITION_CM {
-            continue;
-        }
-        let gap = common([tips[0] - offset_cm, tips[1] + offset_cm], along);
-        if gap[1] - gap[0] > 0.0 {
+        let ends = Edges {
+            at_cm: [tips.at_cm[0] - offset_cm, tips.at_cm[1] + offset_cm],
+            ..tips
+        };
+        let gap = ends.and(along);
+        if gap.width_cm() > 0.0 {
             take(Gap {
                 along: gap,
                 across: width,

@@ -23,6 +23,8 @@ pub(super) struct RangeQuestion<'a> {
     pub(super) limits: &'a Technical,
     /// Whether jaws, leaves and gantry stand still and there is one aperture.
     pub(super) one_aperture: OneAperture,
+    /// Off-axis weight of the scatter.
+    pub(super) scatter_weight: f64,
 }
 
 /// Whether a beam has one aperture or several.
@@ -71,7 +73,27 @@ pub(super) fn outside_range(question: &RangeQuestion<'_>) -> Vec<Obstacle> {
         ));
     }
     found.extend(reach_obstacle(question));
+    found.extend(small_jaws_obstacle(question));
     found
+}
+
+/// So much of the dose may rest on jaw openings below the Sc table, per cent (an own choice): the fit is off there by
+/// a per cent or two at most.
+const BELOW_TABLE_PERCENT: f64 = 25.0;
+
+fn small_jaws_obstacle(question: &RangeQuestion<'_>) -> Option<Obstacle> {
+    let sums = question.sums;
+    let below = sums.below_table.total(question.scatter_weight);
+    let percent = 100.0 * below / sums.couch.total(question.scatter_weight);
+    (percent > BELOW_TABLE_PERCENT).then(|| {
+        outside(
+            ObstacleKind::TableRange,
+            &format!(
+                "{percent:.0} % of the dose is given through jaw openings smaller than the Sc table ({})",
+                question.beam.output_factors.sc.name()
+            ),
+        )
+    })
 }
 
 fn edge_obstacle(question: &RangeQuestion<'_>) -> Option<Obstacle> {

@@ -13,11 +13,11 @@ use super::opening::Opening;
 use super::results::ControlPointDose;
 use super::trace::off_axis_depth_cm;
 use crate::beam_model::scatter::{NoKernel, ScatterAtDepth};
-use crate::beam_model::{BeamModel, CouchArc, HeadScatter, OffAxisKind, OutOfRange};
+use crate::beam_model::{BeamModel, CouchArc, HeadScatter, OffAxisKind, OutOfRange, Penumbra};
 use crate::dose::aperture::collimator_square;
 use crate::dose::placement::BeamGeometry;
 use crate::dose::{FactorName, FieldModel, RayPoint};
-use crate::quantity::tolerance;
+use crate::quantity::{CollimatorSquare, tolerance};
 
 /// Everything that does not change from moment to moment.
 pub(super) struct Standing<'a> {
@@ -27,10 +27,12 @@ pub(super) struct Standing<'a> {
     pub(super) blocks: &'a [BlockShape<'a>],
     pub(super) head: Option<(&'a HeadScatter, Heights)>,
     pub(super) depths: &'a DepthTrack,
-    pub(super) penumbra_sigma_cm: f64,
+    pub(super) penumbra: Penumbra,
     /// The fluence is compared with that at this distance from the point, cm in its plane.
     pub(super) margin_cm: f64,
     pub(super) steps: StepLimits,
+    /// Height of the upper jaws, cm from the source; used below the smallest opening of the Sc table only.
+    pub(super) jaw_height_cm: f64,
     /// Whether the couch counts by the gantry angle.
     pub(super) couch: bool,
 }
@@ -116,6 +118,8 @@ pub(super) struct Sums {
     pub(super) exposure: Exposure,
     /// Least depth, as the build-up counts it, cm.
     pub(super) least_depth_cm: f64,
+    /// Dose while the jaws stand below the smallest opening of the Sc table, in units of `couch`.
+    pub(super) below_table: Parts,
     /// Open fluence beside the point, in four directions.
     pub(super) beside: [f64; 4],
     /// Gap area over gap width of the leaves.
@@ -136,6 +140,7 @@ struct JawScatter {
     jaws_cm: [[f64; 2]; 2],
     side_cm: f64,
     sc: f64,
+    below_table: bool,
 }
 
 /// Adds the moments up.
@@ -185,6 +190,7 @@ struct Instant<'a> {
     inverse_square: f64,
     jaw_sc: f64,
     jaw_side_cm: f64,
+    below_table: bool,
     aperture_over_jaws: f64,
     off_axis_ratio: f64,
     couch: Option<CouchArc>,
@@ -211,7 +217,7 @@ impl<'a> Instant<'a> {
         };
         let kernel = beam.scatter_at(tpr_depth_cm)?;
         let jaw = jaw_scatter(standing, opening, jaws)?;
-        let (jaw_side_cm, jaw_sc) = (jaw.side_cm, jaw.sc);
+        let (jaw_side_cm, jaw_sc, below_table) = (jaw.side_cm, jaw.sc, jaw.below_table);
         let transmission = standing
             .banks
             .iter()
@@ -231,11 +237,12 @@ impl<'a> Instant<'a> {
                 .value
         };
         Ok(Self {
-            exposure: expose(opening, ray, &kernel, standing.penumbra_sigma_cm),
+            exposure: expose(opening, ray, &kernel, &standing.penumbra),
             kernel,
             inverse_square: (beam.output.source_distance_cm / ray.spd_cm).powi(2),
             jaw_sc,
             jaw_side_cm,
+            below_table,
             aperture_over_jaws,
             off_axis_ratio,
             couch: standing.couch_at(moment),
@@ -256,30 +263,55 @@ fn jaw_scatter<'j>(
         .as_ref()
         .is_none_or(|known| known.jaws_cm != opening.jaws_cm);
     if stale {
-        let [x, y] = opening.jaws_cm.map(|jaw| jaw[1] - jaw[0]);
-        let model = standing.model;
-        // Closed jaws give no head scatter of their own: what gets past them is leak.
-        let jaw = if x <= tolerance::POSITION_CM || y <= tolerance::POSITION_CM {
-            JawScatter {
-                jaws_cm: opening.jaws_cm,
-                side_cm: 0.0,
-                sc: 1.0,
-            }
-        } else {
-            let square = collimator_square(x, y, model.upper_jaws, model.beam.exchange_k);
-            let sc = model
-                .beam
-                .sc(square)
-                .map_err(|range| SumError::Range(FactorName::CollimatorScatter, range))?;
-            JawScatter {
-                jaws_cm: opening.jaws_cm,
-                side_cm: square.side_cm(),
-                sc: sc.value,
-            }
-        };
-        *known = Some(jaw);
+        *known = Some(standing.jaw_scatter(opening.jaws_cm)?);
     }
     known.as_ref().ok_or(SumError::Missing("the jaws"))
+}
+
+impl Standing<'_> {
+    /// Sc of a jaw opening. Jaws that close in the course of a moving field pass below the table's smallest
+    /// opening: from there the two-source fit leads on, and the share of the dose that rests on it is told.
+    fn jaw_scatter(&self, jaws_cm: [[f64; 2]; 2]) -> Result<JawScatter, SumError> {
+        let [x, y] = jaws_cm.map(|jaw| jaw[1] - jaw[0]);
+        let beam = self.beam();
+        let table = &beam.output_factors.sc;
+        let least_cm = table.rows().first().copied().unwrap_or_default();
+        let closed = x <= tolerance::POSITION_CM || y <= tolerance::POSITION_CM;
+        let side_cm = if closed {
+            0.0
+        } else {
+            collimator_square(x, y, self.model.upper_jaws, beam.exchange_k).side_cm()
+        };
+        let range = |range| SumError::Range(FactorName::CollimatorScatter, range);
+        let (sc, below_table) = match &beam.head_scatter {
+            Some(head) if side_cm < least_cm - tolerance::TABLE_EDGE_CM => {
+                let at_least = beam.sc(CollimatorSquare::new(least_cm)).map_err(range)?;
+                let seen = |jaws_cm: [[f64; 2]; 2]| {
+                    let [x, y] = jaws_cm.map(|jaw_cm| {
+                        // Both pairs at the height of the upper one: only the ratio of two small openings counts.
+                        head.window(jaw_cm, 0.0, self.jaw_height_cm)
+                    });
+                    head.visible(x, y)
+                };
+                let square = [[-least_cm / 2.0, least_cm / 2.0]; 2];
+                let ratio =
+                    head.output(seen(jaws_cm), side_cm) / head.output(seen(square), least_cm);
+                (at_least.value * ratio, true)
+            }
+            _ => (
+                beam.sc(CollimatorSquare::new(side_cm))
+                    .map_err(range)?
+                    .value,
+                false,
+            ),
+        };
+        Ok(JawScatter {
+            jaws_cm,
+            side_cm,
+            sc,
+            below_table,
+        })
+    }
 }
 
 impl Sums {
@@ -298,6 +330,7 @@ impl Sums {
             jaw_side_cm: 0.0,
             exposure: Exposure::default(),
             least_depth_cm: f64::INFINITY,
+            below_table: Parts::default(),
             beside: [0.0; 4],
             gap_area_cm2: 0.0,
             gap_width_cm: 0.0,
@@ -329,6 +362,10 @@ impl Sums {
         self.in_phantom.add(parts, to_here);
         self.off_axis.add(parts, to_here * at.off_axis_ratio);
         self.couch.add(parts, to_here * at.off_axis_ratio * couch);
+        if at.below_table {
+            self.below_table
+                .add(parts, to_here * at.off_axis_ratio * couch);
+        }
         self.primary += weight * primary;
         self.jaw_sc += weight * at.jaw_sc;
         self.effective_cm += weight * at.effective_cm;
@@ -348,8 +385,7 @@ impl Sums {
             [0.0, -margin_cm],
         ];
         for (sum, shift_cm) in self.beside.iter_mut().zip(shifts) {
-            *sum +=
-                weight * open_fluence_beside(opening, ray, shift_cm, standing.penumbra_sigma_cm);
+            *sum += weight * open_fluence_beside(opening, ray, shift_cm, &standing.penumbra);
         }
         self.gap_area_cm2 += weight * opening.gap_area_cm2;
         self.gap_width_cm += weight * opening.gap_width_cm;

@@ -30,7 +30,7 @@ fn tg71(name: &str) -> MachineModel {
 
 /// A plan of one static 6 MV beam, 10 cm x 10 cm, SAD 100, gantry 0, 100 MU, head first supine,
 /// SSD 90, the dose point at the isocentre: 10 cm deep.
-fn plain_plan() -> Plan {
+pub(crate) fn plain_plan() -> Plan {
     let start = ControlPoint {
         index: Given::stated(0),
         cumulative_weight: Given::stated(0.0),

@@ -199,7 +199,7 @@ pub(super) fn view(beam: &BeamEntry, id: &str) -> BeamView {
         row: row(beam, id.to_owned(), true),
         not_a_result: !is_result(beam.verdict),
         open: !matches!(beam.verdict, Verdict::Within | Verdict::NotTreated),
-        picture: beams_eye::picture(&calculation.view, &format!("{id}-view")),
+        picture: beams_eye::picture(calculation, &format!("{id}-view")),
         deviation_words: drawn.as_ref().map_or_else(String::new, deviation::words),
         deviation_svg: drawn.map(|drawn| deviation::picture(&drawn, &format!("{id}-dev"))),
         judgement: judgement(beam),

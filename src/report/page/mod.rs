@@ -8,6 +8,8 @@ mod beam_view;
 mod beams_eye;
 mod deviation;
 mod left_out;
+mod moving;
+mod outline;
 mod parts;
 mod plan_view;
 mod run_view;

@@ -37,7 +37,8 @@ pub use limits::outside_method;
 pub use mayneord::{Mayneord, mayneord};
 pub use outcome::{
     BeamCalculation, BeamView, BlockOutline, DepthBasis, DepthCandidate, DosePoint, LastAperture,
-    LeafOpening, Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares, Technique,
+    LeafOpening, Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares,
+    Technique,
 };
 pub use proof::prove;
 pub use ray::RayPoint;

@@ -85,7 +85,7 @@ pub(super) fn picture(calculation: &BeamCalculation, id: &str) -> Option<Picture
     } else {
         one_aperture(view)
     };
-    let caption = caption(view, half_cm, seen);
+    let caption = caption(view, half_cm, seen, unplaced_point(calculation));
     let svg = drawing.finish(
         id,
         "bev",
@@ -100,7 +100,10 @@ fn half_width_cm(view: &BeamView, grey: Option<&moving::Grey>) -> f64 {
     let jaws = [view.jaws_x_cm, view.jaws_y_cm];
     let jaws = jaws
         .into_iter()
-        .chain(last.into_iter().flat_map(|last| [last.jaws_x_cm, last.jaws_y_cm]))
+        .chain(
+            last.into_iter()
+                .flat_map(|last| [last.jaws_x_cm, last.jaws_y_cm]),
+        )
         .flatten()
         .flatten();
     let blocks = view.blocks.iter().flat_map(|block| block.outline_cm.iter());
@@ -259,7 +262,23 @@ fn one_aperture(view: &BeamView) -> Vec<String> {
     }
 }
 
-fn caption(view: &BeamView, half_cm: f64, seen: Vec<String>) -> String {
+/// What the caption says of a point that is not drawn.
+const fn unplaced_point(calculation: &BeamCalculation) -> &'static str {
+    match (&calculation.point, calculation.technique) {
+        (Some(_), Technique::Arc) => {
+            "the dose point is not drawn: it moves across this view as the gantry turns"
+        }
+        (Some(_), _) => "the dose point's place in this view is not known",
+        (None, _) => "no dose point",
+    }
+}
+
+fn caption(
+    view: &BeamView,
+    half_cm: f64,
+    seen: Vec<String>,
+    unplaced_point: &'static str,
+) -> String {
     let range = |name: &str, sides: [f64; 2]| {
         format!(
             "{name} {} to {} cm",
@@ -269,8 +288,16 @@ fn caption(view: &BeamView, half_cm: f64, seen: Vec<String>) -> String {
     };
     let mut parts = Vec::new();
     let axes = [
-        ("X jaws", view.jaws_x_cm, view.last.as_ref().map(|last| last.jaws_x_cm)),
-        ("Y jaws", view.jaws_y_cm, view.last.as_ref().map(|last| last.jaws_y_cm)),
+        (
+            "X jaws",
+            view.jaws_x_cm,
+            view.last.as_ref().map(|last| last.jaws_x_cm),
+        ),
+        (
+            "Y jaws",
+            view.jaws_y_cm,
+            view.last.as_ref().map(|last| last.jaws_y_cm),
+        ),
     ];
     for (name, first, last) in axes {
         let first = first.map(|sides| range(name, sides));
@@ -310,7 +337,7 @@ fn caption(view: &BeamView, half_cm: f64, seen: Vec<String>) -> String {
             place
         });
     } else {
-        parts.push("no dose point".to_owned());
+        parts.push(unplaced_point.to_owned());
     }
     parts.join("; ")
 }

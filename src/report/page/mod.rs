@@ -13,6 +13,7 @@ mod outline;
 mod parts;
 mod plan_view;
 mod run_view;
+mod shaped_view;
 mod style;
 mod trace_view;
 mod urgency;

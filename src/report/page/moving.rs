@@ -26,7 +26,12 @@ pub(super) struct Grey {
 
 /// The picture; `None` when nothing is open or the image does not fit its own numbers.
 pub(super) fn grey(image: &FluenceImage) -> Option<Grey> {
-    let greatest = image.values.iter().copied().max().filter(|most| *most > 0)?;
+    let greatest = image
+        .values
+        .iter()
+        .copied()
+        .max()
+        .filter(|most| *most > 0)?;
     if image.columns == 0 || image.values.len() != image.columns * image.rows {
         return None;
     }
@@ -139,21 +144,26 @@ pub(super) fn draw_legend(drawing: &mut Drawing, view: &BeamView, grey: Option<&
     if view.last.is_some() {
         let from = LEFT + PLOT / 2.0;
         drawing.line(last, [from, at], [from + 26.0, at]);
-        drawing.text("label", [from + 32.0, at + 3.5], Anchor::Start, "last aperture");
+        drawing.text(
+            "label",
+            [from + 32.0, at + 3.5],
+            Anchor::Start,
+            "last aperture",
+        );
     }
     let Some(grey) = grey else { return };
     let at = at + 12.0;
     // Every fourth entry is as fine as the eye sees here.
     let entries: Vec<u8> = (1..=255).step_by(4).collect();
     if let Some(ramp) = grey_picture(entries.len(), &entries) {
-        let corners = [[LEFT, at], [LEFT + 84.0, at + 10.0]];
+        let corners = [[LEFT, at], [LEFT + 62.0, at + 10.0]];
         drawing.image("bev-fluence", corners[0], corners[1], &ramp);
         drawing.rectangle("bev-frame", corners[0], corners[1]);
         let words = format!(
-            "open for 0 to {} % of the meterset",
+            "open 0 to {} % of the meterset",
             fixed(grey.greatest_percent, 0)
         );
-        drawing.text("label", [LEFT + 90.0, at + 8.5], Anchor::Start, &words);
+        drawing.text("label", [LEFT + 68.0, at + 8.5], Anchor::Start, &words);
     }
 }
 

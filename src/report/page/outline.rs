@@ -56,7 +56,10 @@ fn common(one: &Rectangle, other: &Rectangle) -> Option<Rectangle> {
 /// Edges of the union, the open side to their left, between all levels at which something begins or ends.
 fn edges(open: &[Rectangle]) -> Vec<[Corner; 2]> {
     let whole = |cm: f64| (cm.clamp(-1e6, 1e6) * CORNERS_PER_CM).round() as i64;
-    let open: Vec<[[i64; 2]; 2]> = open.iter().map(|sides| sides.map(|s| s.map(whole))).collect();
+    let open: Vec<[[i64; 2]; 2]> = open
+        .iter()
+        .map(|sides| sides.map(|s| s.map(whole)))
+        .collect();
     let mut levels: Vec<i64> = open.iter().flat_map(|[_, y]| *y).collect();
     levels.sort_unstable();
     levels.dedup();
@@ -166,9 +169,7 @@ mod tests {
         let one = |points: &Vec<[f64; 2]>| -> f64 {
             let next = points.iter().cycle().skip(1);
             let pairs = points.iter().zip(next);
-            pairs
-                .map(|(a, b)| (a[0] * b[1] - b[0] * a[1]) / 2.0)
-                .sum()
+            pairs.map(|(a, b)| (a[0] * b[1] - b[0] * a[1]) / 2.0).sum()
         };
         polygons.iter().map(one).sum()
     }
@@ -177,7 +178,11 @@ mod tests {
     fn verify_two_leaf_pairs_give_one_polygon() {
         // By hand: 4 x 1 and 2 x 1 cm, one above the other: six cm2, eight corners.
         let bank = vec![leaf(-2.0, 2.0, 0.0, 1.0), leaf(-1.0, 1.0, 1.0, 2.0)];
-        let found = outlines([Some([-5.0, 5.0]), Some([-5.0, 5.0])], &[bank], [-20.0, 20.0]);
+        let found = outlines(
+            [Some([-5.0, 5.0]), Some([-5.0, 5.0])],
+            &[bank],
+            [-20.0, 20.0],
+        );
         assert_eq!(found.len(), 1);
         assert_eq!(found[0].len(), 8, "{found:?}");
         assert!((area_cm2(&found) - 6.0).abs() < 1e-9, "{found:?}");
@@ -187,7 +192,11 @@ mod tests {
     fn verify_jaws_cut_and_equal_leaves_make_a_rectangle() {
         // By hand: jaws x -1 .. 3, y 0.5 .. 1.5 of leaves -2 .. 2: 3 x 1 cm.
         let bank = vec![leaf(-2.0, 2.0, 0.0, 1.0), leaf(-2.0, 2.0, 1.0, 2.0)];
-        let found = outlines([Some([-1.0, 3.0]), Some([0.5, 1.5])], &[bank], [-20.0, 20.0]);
+        let found = outlines(
+            [Some([-1.0, 3.0]), Some([0.5, 1.5])],
+            &[bank],
+            [-20.0, 20.0],
+        );
         let corners = [[-1.0, 0.5], [2.0, 0.5], [2.0, 1.5], [-1.0, 1.5]];
         assert_eq!(found, [corners.to_vec()]);
     }

@@ -120,7 +120,11 @@ impl HeadScatter {
     /// The fit beside the Sc table that it was made from, square by square; empty when the model does not give
     /// the distances of the jaws.
     #[must_use]
-    pub fn beside_table(&self, collimation: &Collimation, beam: &BeamModel) -> Vec<HeadScatterCell> {
+    pub fn beside_table(
+        &self,
+        collimation: &Collimation,
+        beam: &BeamModel,
+    ) -> Vec<HeadScatterCell> {
         let jaw_cm = |axis: JawAxis| collimation.jaw(axis)?.source_distance_cm;
         let (Some(jaw_x_cm), Some(jaw_y_cm)) = (jaw_cm(JawAxis::X), jaw_cm(JawAxis::Y)) else {
             return Vec::new();

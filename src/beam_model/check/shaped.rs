@@ -6,9 +6,9 @@ use super::ModelFinding;
 use crate::beam_model::scatter::ScatterRow;
 use crate::beam_model::{BeamModel, HeadScatterCell, MachineModel};
 
-/// Attenuation of a 6 MV primary in water between 10 and 20 cm, per cm: from the attenuation coefficients of NIST
-/// (Hubbell & Seltzer, 1 MeV 0.0707, 2 MeV 0.0494, 3 MeV 0.0397 cm2/g), weighted with the energy that reaches these
-/// depths, for spectra of flattened 6 MV beams.
+/// Attenuation of a 6 MV primary in water between 10 and 20 cm, per cm: that of photons of 1.8 to 2.4 MeV by the
+/// coefficients of NIST (1.5 MeV 0.0575, 2 MeV 0.0494, 3 MeV 0.0397 cm2/g), which the spectra of flattened 6 MV beams
+/// come to at these depths.
 const ATTENUATION_6_MV: (f64, f64) = (0.045, 0.053);
 
 pub(super) fn check(machine: &MachineModel, beam: &BeamModel) -> Vec<ModelFinding> {

@@ -3,8 +3,8 @@
 
 use std::sync::OnceLock;
 
-use super::{RadialDose, ScatterRow};
 use super::quadrant::{Place, Quadrants, place};
+use super::{RadialDose, ScatterRow};
 use crate::beam_model::{BeamModel, OutOfRange, TableKind};
 use crate::quantity::PointSquare;
 

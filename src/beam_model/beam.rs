@@ -5,7 +5,7 @@ use std::sync::Arc;
 
 use serde::Serialize;
 
-use super::scatter::{NoKernel, ScatterAtDepth, ScatterKernel};
+use super::scatter::{NoKernel, ScatterAtDepth, ScatterKernel, ScatterRow};
 use super::{Grid, HeadScatter, Lookup, OutOfRange, ProofPoint};
 use crate::plan::{BeamEnergy, RadiationType};
 use crate::quantity::{
@@ -261,6 +261,19 @@ impl BeamModel {
     /// When the depth is outside the table, or too few squares reach it.
     pub fn scatter_at(&self, depth_cm: f64) -> Result<ScatterAtDepth<'_>, NoKernel> {
         self.kernel.at(self, depth_cm)
+    }
+
+    /// The depths of the table at which the scatter kernel can be had, with the squares that it was made from.
+    pub fn scatter_rows(&self) -> impl Iterator<Item = ScatterRow<'_>> {
+        self.kernel.rows(self)
+    }
+
+    /// Attenuation of the primary as the zero-field terms tell it between 10 and 20 cm, ln(K(10, 0)/K(20, 0))/10,
+    /// per cm; `None` when the tables do not reach so far.
+    #[must_use]
+    pub fn primary_attenuation_per_cm(&self) -> Option<f64> {
+        let primary = |depth_cm| Some(self.scatter_at(depth_cm).ok()?.primary());
+        Some((primary(10.0)? / primary(20.0)?).ln() / 10.0)
     }
 
     /// Transmission of a tray by its ID.

@@ -34,6 +34,25 @@ pub struct HeadScatter {
     pub residual_percent: f64,
 }
 
+/// A cell of the Sc table beside the fit.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct HeadScatterCell {
+    /// Side of the square at the isocentre plane, cm.
+    pub side_cm: f64,
+    /// Sc of the table.
+    pub sc: f64,
+    /// Sc of the fit.
+    pub fitted: f64,
+}
+
+impl HeadScatterCell {
+    /// By how much the fit misses the table, per cent.
+    #[must_use]
+    pub fn residual_percent(&self) -> f64 {
+        100.0 * (self.fitted / self.sc - 1.0)
+    }
+}
+
 /// An opening as the extra-focal plane sees it through one device at its height.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct HeadWindow {
@@ -96,6 +115,44 @@ impl HeadScatter {
             }
         }
         best.map(|(_, fitted)| fitted)
+    }
+
+    /// The fit beside the Sc table that it was made from, square by square; empty when the model does not give
+    /// the distances of the jaws.
+    #[must_use]
+    pub fn beside_table(
+        &self,
+        collimation: &Collimation,
+        beam: &BeamModel,
+    ) -> Vec<HeadScatterCell> {
+        let jaw_cm = |axis: JawAxis| collimation.jaw(axis)?.source_distance_cm;
+        let (Some(jaw_x_cm), Some(jaw_y_cm)) = (jaw_cm(JawAxis::X), jaw_cm(JawAxis::Y)) else {
+            return Vec::new();
+        };
+        let table = &beam.output_factors.sc;
+        let rows: Vec<[f64; 3]> = table
+            .rows()
+            .iter()
+            .enumerate()
+            .filter_map(|(row, &side_cm)| {
+                let jaw = [-side_cm / 2.0, side_cm / 2.0];
+                let x = self.window(jaw, 0.0, jaw_x_cm);
+                let y = self.window(jaw, 0.0, jaw_y_cm);
+                let output = self.output(self.visible(x, y), side_cm);
+                Some([side_cm, table.cell_value(row, 0)?, output])
+            })
+            .collect();
+        // The scale of least squares, as in the fit.
+        let [across, square] = rows.iter().fold([0.0, 0.0], |[across, square], row| {
+            [across + row[1] * row[2], square + row[2] * row[2]]
+        });
+        rows.into_iter()
+            .map(|[side_cm, sc, output]| HeadScatterCell {
+                side_cm,
+                sc,
+                fitted: output * across / square,
+            })
+            .collect()
     }
 
     /// What of the extra-focal plane a point sees along one axis between two edges: edges and point in

@@ -5,7 +5,7 @@
 use std::sync::Arc;
 
 use super::delivery::Interval;
-use super::{BeamView, BlockOutline, LeafOpening, RayPoint};
+use super::{BeamView, BlockOutline, LastAperture, LeafOpening, RayPoint};
 use crate::beam_model::JawAxis;
 use crate::plan::{Beam, BlockType, ControlPoint, LeafAxis, LeafPositions};
 use crate::quantity::{CollimatorSquare, PointSquare, sterling_side_cm, tolerance};
@@ -122,16 +122,16 @@ fn open_pairs(beam: &Beam, bank: &LeafPositions) -> Vec<LeafOpening> {
     pairs
 }
 
-/// What the beam's-eye view draws at one control point; the point is added by the caller.
-pub(super) fn view_at(beam: &Beam, point: &ControlPoint) -> BeamView {
+/// What the beam's-eye view draws, from the control point where dose begins and the one where it ends; the
+/// dose point is added by the caller.
+pub(super) fn view_between(beam: &Beam, first: &ControlPoint, last: &ControlPoint) -> BeamView {
+    let begins = aperture_at(beam, first);
+    let ends = aperture_at(beam, last);
     BeamView {
-        jaws_x_cm: point.jaws_x_cm.get(),
-        jaws_y_cm: point.jaws_y_cm.get(),
-        leaf_banks: point
-            .leaves
-            .iter()
-            .map(|bank| open_pairs(beam, bank))
-            .collect(),
+        last: differs(&begins, &ends).then_some(ends),
+        jaws_x_cm: begins.jaws_x_cm,
+        jaws_y_cm: begins.jaws_y_cm,
+        leaf_banks: begins.leaf_banks,
         blocks: beam
             .blocks
             .iter()
@@ -144,6 +144,42 @@ pub(super) fn view_at(beam: &Beam, point: &ControlPoint) -> BeamView {
             .collect(),
         point_cm: None,
     }
+}
+
+fn aperture_at(beam: &Beam, point: &ControlPoint) -> LastAperture {
+    LastAperture {
+        jaws_x_cm: point.jaws_x_cm.get(),
+        jaws_y_cm: point.jaws_y_cm.get(),
+        leaf_banks: point
+            .leaves
+            .iter()
+            .map(|bank| open_pairs(beam, bank))
+            .collect(),
+    }
+}
+
+/// Whether two apertures differ by more than the rounding of positions.
+fn differs(one: &LastAperture, other: &LastAperture) -> bool {
+    let apart = |a: f64, b: f64| (a - b).abs() > tolerance::POSITION_CM;
+    let jaws = |a: Option<[f64; 2]>, b: Option<[f64; 2]>| match (a, b) {
+        (Some(a), Some(b)) => a.into_iter().zip(b).any(|(a, b)| apart(a, b)),
+        (None, None) => false,
+        _ => true,
+    };
+    let leaf = |a: &LeafOpening, b: &LeafOpening| {
+        apart(a.x1_cm, b.x1_cm)
+            || apart(a.x2_cm, b.x2_cm)
+            || apart(a.y1_cm, b.y1_cm)
+            || apart(a.y2_cm, b.y2_cm)
+    };
+    let bank = |a: &Vec<LeafOpening>, b: &Vec<LeafOpening>| {
+        a.len() != b.len() || a.iter().zip(b).any(|(a, b)| leaf(a, b))
+    };
+    let banks = one.leaf_banks.iter().zip(&other.leaf_banks);
+    jaws(one.jaws_x_cm, other.jaws_x_cm)
+        || jaws(one.jaws_y_cm, other.jaws_y_cm)
+        || one.leaf_banks.len() != other.leaf_banks.len()
+        || banks.into_iter().any(|(a, b)| bank(a, b))
 }
 
 /// Openings along x and y at the isocentre plane, cm: of the jaws, or of the

@@ -3,7 +3,7 @@
 //! also when no model is there or no method covers the beam. Whether the dose
 //! is the planned one is judged in `audit`.
 
-use super::aperture::{collimator_square, mean_openings, point_square, view_at};
+use super::aperture::{collimator_square, mean_openings, point_square, view_between};
 use super::delivery::{Interval, delivering_points, intervals};
 use super::depth::find_depths;
 use super::depth_question::{DepthFindings, DepthQuestion, DepthRow};
@@ -181,7 +181,10 @@ fn described(
         spread: None,
         obstacles: Vec::new(),
         remarks: Vec::new(),
-        view: first.map(|point| view_at(beam, point)).unwrap_or_default(),
+        view: first
+            .zip(last)
+            .map(|(first, last)| view_between(beam, first, last))
+            .unwrap_or_default(),
     }
 }
 

@@ -36,8 +36,9 @@ pub use field::{FactorError, FieldDepth, FieldInput, FieldModel, Form, Tray, Typ
 pub use limits::outside_method;
 pub use mayneord::{Mayneord, mayneord};
 pub use outcome::{
-    BeamCalculation, BeamView, BlockOutline, DepthBasis, DepthCandidate, DosePoint, LeafOpening,
-    Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares, Technique,
+    BeamCalculation, BeamView, BlockOutline, DepthBasis, DepthCandidate, DosePoint, LastAperture,
+    LeafOpening, Method, Obstacle, ObstacleKind, PointBasis, Spread, SpreadTerm, Squares,
+    Technique,
 };
 pub use proof::prove;
 pub use ray::RayPoint;

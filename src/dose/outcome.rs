@@ -269,6 +269,19 @@ pub struct BeamView {
     pub blocks: Vec<BlockOutline>,
     /// The dose point's projection [x, y].
     pub point_cm: Option<[f64; 2]>,
+    /// Jaws and leaves of the control point where dose ends; `None` when they stand as where it begins.
+    pub last: Option<LastAperture>,
+}
+
+/// Jaws and leaves where dose ends, cm at the isocentre plane.
+#[derive(Clone, Debug, Default, PartialEq, Serialize)]
+pub struct LastAperture {
+    /// X jaws.
+    pub jaws_x_cm: Option<[f64; 2]>,
+    /// Y jaws.
+    pub jaws_y_cm: Option<[f64; 2]>,
+    /// Leaf openings, by bank.
+    pub leaf_banks: Vec<Vec<LeafOpening>>,
 }
 
 /// A block's outline.

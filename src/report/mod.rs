@@ -4,6 +4,7 @@
 //! Nothing here recomputes or judges: numbers and sentences come from `audit`,
 //! `dose` and `plan` as they are. Printing is the work of `cli`.
 
+mod base64;
 mod error;
 mod field_text;
 mod folder;

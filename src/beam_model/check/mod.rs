@@ -9,6 +9,7 @@ mod off_axis;
 mod outlier;
 mod output;
 mod quality;
+mod shaped;
 mod whole;
 
 pub use quality::tpr20_10_from_pdd20_10;
@@ -151,6 +152,7 @@ pub fn check_machine(machine: &MachineModel, today: jiff::civil::Date) -> Vec<Mo
             depth_cells::check(beam),
             output::check(beam),
             off_axis::check(beam),
+            shaped::check(machine, beam),
         ];
         findings.extend(of_beam.into_iter().flatten().map(|mut finding| {
             finding.beam = Some(beam.label.clone());

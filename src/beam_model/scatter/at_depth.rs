@@ -3,8 +3,8 @@
 
 use std::sync::OnceLock;
 
-use super::RadialDose;
 use super::quadrant::{Place, Quadrants, place};
+use super::{RadialDose, ScatterRow};
 use crate::beam_model::{BeamModel, OutOfRange, TableKind};
 use crate::quantity::PointSquare;
 
@@ -55,6 +55,29 @@ impl ScatterKernel {
         Self {
             rows: rows.collect(),
         }
+    }
+
+    /// The depths at which the kernel can be had, with the squares that it was made from.
+    pub(in crate::beam_model) fn rows<'a>(
+        &'a self,
+        beam: &'a BeamModel,
+    ) -> impl Iterator<Item = ScatterRow<'a>> {
+        self.rows.iter().filter_map(move |row| {
+            let made = row
+                .made
+                .get_or_init(|| MadeRow::new(beam, row.depth_cm))
+                .as_ref()?;
+            let squares = sides_at(beam, row.depth_cm).into_iter();
+            Some(ScatterRow {
+                depth_cm: row.depth_cm,
+                squares: squares
+                    .filter_map(|side_cm| {
+                        Some((side_cm, square_dose(beam, row.depth_cm, side_cm).ok()?))
+                    })
+                    .collect(),
+                radial: &made.radial,
+            })
+        })
     }
 
     /// The kernel at a depth, cm, for the beam that it belongs to.

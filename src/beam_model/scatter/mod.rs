@@ -16,8 +16,10 @@
 mod at_depth;
 mod quadrant;
 mod radial;
+mod table_row;
 mod zero_field;
 
 pub use at_depth::{NoKernel, ScatterAtDepth, ScatterKernel};
 pub use radial::RadialDose;
+pub use table_row::ScatterRow;
 pub use zero_field::ZeroField;

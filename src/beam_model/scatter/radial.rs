@@ -99,6 +99,12 @@ impl RadialDose {
         }
     }
 
+    /// Radius of the circle at whose K a square's dose lies but for a little, cm.
+    #[must_use]
+    pub fn radius_of_square_cm(side_cm: f64) -> f64 {
+        MEAN_RADIUS * side_cm
+    }
+
     /// K at a radius, cm; beyond the reach it stays at its last value.
     #[must_use]
     pub fn at(&self, radius_cm: f64) -> f64 {

@@ -27,6 +27,16 @@ pub struct ZeroField {
 }
 
 impl ZeroField {
+    /// So many of the smallest fields are fitted.
+    pub const FITTED: usize = FITTED;
+
+    /// Whether the fit was held at a bound of B: the table does not tell more.
+    #[must_use]
+    pub fn is_at_bound(&self) -> bool {
+        let near = |bound_cm: f64| (self.half_radius_cm / bound_cm - 1.0).abs() < 1e-6;
+        near(LEAST_B_CM) || near(GREATEST_B_CM)
+    }
+
     /// The dose at a radius, cm.
     #[must_use]
     pub fn at(&self, radius_cm: f64) -> f64 {

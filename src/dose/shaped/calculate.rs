@@ -193,11 +193,16 @@ fn conclude(
         return;
     };
     let scatter_weight = 1.0;
-    let trace = trace_of(sums, standing, scatter_weight, field.tray);
     let shaped = shaped_result(standing, sums, scatter_weight, field.steps);
     let fluence = sums.exposure.open_fluence + sums.exposure.leak_fluence;
     let scatter = sums.exposure.open_scatter + sums.exposure.leak_scatter;
     let equivalent_side_cm = kernel.side_with_scatter(scatter / (fluence * kernel.primary()));
+    let trace = trace_of(
+        sums,
+        standing,
+        (scatter_weight, equivalent_side_cm),
+        field.tray,
+    );
     result.squares = Some(Squares {
         collimator: CollimatorSquare::new(sums.jaw_side_cm),
         phantom: Some(PointSquare::new(equivalent_side_cm)),
@@ -231,6 +236,10 @@ fn conclude(
         && point.off_axis_cm.is_none()
     {
         point.off_axis_cm = Some(sums.off_axis_cm);
+    }
+    // A point on the axis stays where it is while the gantry turns.
+    if result.view.point_cm.is_none() && sums.off_axis_cm < tolerance::POSITION_CM {
+        result.view.point_cm = Some([0.0, 0.0]);
     }
     result.trace = Some(trace);
     result.method = Some(Method::ScatterIntegration);

@@ -48,6 +48,8 @@ pub struct ControlPointDose {
     pub point_fluence: f64,
     /// Head scatter factor of the aperture.
     pub head_scatter: f64,
+    /// F(A): dose in phantom per unit in-air fluence, primary and scatter.
+    pub in_phantom: f64,
     /// Dose per MU of the whole beam that this interval adds, cGy/MU.
     pub dose_per_mu_cgy: f64,
 }

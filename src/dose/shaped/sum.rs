@@ -418,6 +418,7 @@ impl Sums {
         // Without the off-axis weight of the scatter, which is known at the end only.
         let dose_per_mu_cgy = dose.total(1.0) * standing.beam().output.dose_per_mu_cgy;
         let head_scatter = at.jaw_sc * at.aperture_over_jaws;
+        let in_phantom = parts.total(1.0);
         let fluence = at.exposure.open_fluence + at.exposure.leak_fluence;
         let percent = 100.0 * moment.weight;
         match self.intervals.last_mut() {
@@ -428,6 +429,7 @@ impl Sums {
                 last.spd_cm = mean(last.spd_cm, ray.spd_cm);
                 last.point_fluence = mean(last.point_fluence, fluence);
                 last.head_scatter = mean(last.head_scatter, head_scatter);
+                last.in_phantom = mean(last.in_phantom, in_phantom);
                 last.gantry_deg = last
                     .gantry_deg
                     .zip(moment.gantry_deg)
@@ -443,6 +445,7 @@ impl Sums {
                 spd_cm: ray.spd_cm,
                 point_fluence: fluence,
                 head_scatter,
+                in_phantom,
                 dose_per_mu_cgy,
             }),
         }

@@ -4,7 +4,7 @@
 
 use super::depth_track::DepthAt;
 use super::sum::{Standing, Sums};
-use crate::beam_model::{BeamModel, OffAxisKind};
+use crate::beam_model::{BeamModel, JawAxis, OffAxisKind};
 use crate::dose::text::number;
 use crate::dose::{Factor, FactorName, Input, RayPoint, Trace, Tray};
 
@@ -22,11 +22,12 @@ pub(super) fn off_axis_depth_cm(
     }
 }
 
-/// The trace; `scatter_weight` is the off-axis weight of the scatter.
+/// The trace; `scatter_weight` is the off-axis weight of the scatter, `equivalent_side_cm` the side of the
+/// square with as much scatter per primary.
 pub(super) fn trace_of(
     sums: &Sums,
     standing: &Standing<'_>,
-    scatter_weight: f64,
+    (scatter_weight, equivalent_side_cm): (f64, f64),
     tray: Option<&Tray>,
 ) -> Trace {
     let output = standing.model.beam.output;
@@ -34,11 +35,22 @@ pub(super) fn trace_of(
     let off_axis = sums.off_axis.total(scatter_weight);
     let couch = sums.couch.total(scatter_weight);
     let ratio = |a: f64, b: f64| if b == 0.0 { 0.0 } else { a / b };
-    let moving = if sums.moments > 1 {
-        format!(", mean over the meterset of {} moments", sums.moments)
+    let several = sums.moments > 1;
+    let mean = if several {
+        format!("; mean over the meterset of {} moments", sums.moments)
     } else {
         String::new()
     };
+    // The factor is a weighted mean of products; the numbers beside it are means of their own.
+    let means = if several {
+        format!(
+            "; mean of {} moments, weighted with the meterset and the factors before it, of which these are plain means",
+            sums.moments
+        )
+    } else {
+        String::new()
+    };
+    let head_scatter = ratio(sums.head, sums.inverse_square);
     let mut factors = vec![
         Factor {
             name: FactorName::ReferenceOutput,
@@ -51,22 +63,29 @@ pub(super) fn trace_of(
         },
         Factor {
             name: FactorName::ApertureHeadScatter,
-            value: ratio(sums.head, sums.inverse_square),
+            value: head_scatter,
             source: format!(
-                "Sc of the jaws {} (c = {} cm) times two-source head scatter of the aperture over that of the jaws{moving}",
+                "{} * {}: Sc of the jaws (c = {} cm, {}) times the two-source head scatter of the aperture over that of the jaws{means}",
                 number(sums.jaw_sc),
-                number(sums.jaw_side_cm)
+                number(ratio(head_scatter, sums.jaw_sc)),
+                number(sums.jaw_side_cm),
+                standing.model.beam.output_factors.sc.name()
             ),
         },
         Factor {
             name: FactorName::ApertureInPhantom,
             value: ratio(in_phantom, sums.head),
             source: format!(
-                "K(d,0) * Phi_p + G * S with K(d,0) {}, Phi_p {}, S {}, G {}{moving}",
+                "K(d,0) * (Phi_open + Phi_leak) + {}(S_open + S_leak) = {} * {} + {}{}{means}",
+                if scatter_weight == 1.0 { "" } else { "G * " },
                 number(sums.primary),
                 number(sums.exposure.open_fluence + sums.exposure.leak_fluence),
-                number(sums.exposure.open_scatter + sums.exposure.leak_scatter),
-                number(scatter_weight)
+                if scatter_weight == 1.0 {
+                    String::new()
+                } else {
+                    format!("{} * ", number(scatter_weight))
+                },
+                number(sums.exposure.open_scatter + sums.exposure.leak_scatter)
             ),
         },
         Factor {
@@ -76,7 +95,7 @@ pub(super) fn trace_of(
                 "on the axis: 1 by definition".to_owned()
             } else {
                 format!(
-                    "{}, at r = {} cm{moving}",
+                    "{}, at r = {} cm{mean}",
                     standing.model.beam.off_axis.grid.name(),
                     number(sums.off_axis_cm)
                 )
@@ -95,8 +114,8 @@ pub(super) fn trace_of(
             name: FactorName::Couch,
             value: ratio(couch, off_axis),
             source: format!(
-                "beam model, by gantry angle: the couch is in the beam for {} % of the meterset",
-                number(100.0 * sums.couch_share)
+                "beam model, by gantry angle: the couch is in the beam for {:.1} % of the meterset",
+                100.0 * sums.couch_share
             ),
         });
     }
@@ -104,7 +123,7 @@ pub(super) fn trace_of(
         name: FactorName::InverseSquare,
         value: sums.inverse_square,
         source: format!(
-            "({} / SPD)^2 with SPD {} cm{moving}",
+            "({} / {})^2: S_ref over SPD{mean}",
             number(output.source_distance_cm),
             number(sums.spd_cm)
         ),
@@ -113,87 +132,119 @@ pub(super) fn trace_of(
     Trace::new(
         symbols.join(" * "),
         "scatter integration (Clarkson 1941, Cunningham 1972) with the model's tables",
-        inputs(sums),
+        inputs(sums, standing, equivalent_side_cm),
         factors,
     )
 }
 
-fn inputs(sums: &Sums) -> Vec<Input> {
-    let mean = if sums.moments > 1 {
-        "mean over the meterset"
-    } else {
-        "of the field"
+/// The jaws' own square, in the words of its formula.
+fn jaw_square(sums: &Sums, standing: &Standing<'_>) -> String {
+    let model = standing.model;
+    let (upper, lower) = match model.upper_jaws {
+        JawAxis::X => ("x", "y"),
+        JawAxis::Y => ("y", "x"),
     };
-    let input = |name, symbol, value, unit, source: &str| Input {
+    let formula = format!(
+        "(1 + k) L U / (k L + U) of the jaws, U {upper} and L {lower}, k {}",
+        number(model.beam.exchange_k)
+    );
+    if sums.moments > 1 {
+        return format!("{formula}; mean over the meterset");
+    }
+    let [x_cm, y_cm] = sums.opening.jaws_cm.map(|jaw| jaw[1] - jaw[0]);
+    format!("{formula}, x {} cm, y {} cm", number(x_cm), number(y_cm))
+}
+
+fn inputs(sums: &Sums, standing: &Standing<'_>, equivalent_side_cm: f64) -> Vec<Input> {
+    let of_field = |what: &str| {
+        if sums.moments > 1 {
+            format!("{what}, mean over the meterset")
+        } else {
+            what.to_owned()
+        }
+    };
+    let input = |name, symbol, value, unit, source: String| Input {
         name,
         symbol,
         value,
         unit,
-        source: source.to_owned(),
+        source,
     };
+    let exposure = &sums.exposure;
     vec![
         input(
             "equivalent square of the jaws for head scatter",
             "c",
             sums.jaw_side_cm,
             "cm",
-            mean,
+            jaw_square(sums, standing),
         ),
         input(
             "source-point distance along the axis",
             "SPD",
             sums.spd_cm,
             "cm",
-            mean,
+            of_field("from the place of the point below the source"),
         ),
         input(
             "off-axis radius projected to the isocentre plane",
             "r",
             sums.off_axis_cm,
             "cm",
-            mean,
+            of_field("from the place of the point below the source"),
         ),
         input(
             "effective depth along the ray",
             "d_eff",
             sums.effective_cm,
             "cm",
-            mean,
+            of_field("from the depth used, see below"),
         ),
         input(
-            "primary dose per unit fluence (zero field)",
+            "dose by the primary alone, per unit in-air fluence",
             "K(d,0)",
             sums.primary,
             "",
-            "zero-field end of TPR * Sp",
+            of_field("TPR * Sp of the squares carried on to zero field, drawn by counterfoil model show"),
         ),
         input(
-            "open primary fluence at the point",
+            "in-air fluence at the point through the opening",
             "Phi_open",
-            sums.exposure.open_fluence,
+            exposure.open_fluence,
             "",
-            "blurred by the penumbra",
+            of_field(&format!(
+                "1 in the open; edges blurred by a Gaussian of sigma {} cm",
+                number(standing.penumbra_sigma_cm)
+            )),
         ),
         input(
-            "fluence through leaves and blocks at the point",
+            "in-air fluence at the point through leaves and blocks",
             "Phi_leak",
-            sums.exposure.leak_fluence,
+            exposure.leak_fluence,
             "",
-            "transmission of the beam model and of the plan's blocks",
+            of_field("transmission of the model's leaves and of the plan's blocks"),
         ),
         input(
-            "scatter of the open fluence",
+            "phantom scatter of the open fluence",
             "S_open",
-            sums.exposure.open_scatter,
+            exposure.open_scatter,
             "",
-            "integral of the differential scatter kernel over the opening",
+            of_field("integral of the differential scatter kernel over the opening, in the plane of the point"),
         ),
         input(
-            "scatter of the transmitted fluence",
+            "phantom scatter of the transmitted fluence",
             "S_leak",
-            sums.exposure.leak_scatter,
+            exposure.leak_scatter,
             "",
-            "the same over what lets through",
+            of_field("the same over what leaves and blocks let through"),
+        ),
+        input(
+            "square with as much scatter per primary",
+            "s",
+            equivalent_side_cm,
+            "cm",
+            "in the plane of the point: TPR(d_eff, s) * Sp(s) times the fluence at the point is about F(A)"
+                .to_owned(),
         ),
     ]
 }

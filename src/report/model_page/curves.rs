@@ -31,7 +31,20 @@ const LABEL_HEIGHT: f64 = 12.0;
 
 /// The picture.
 pub(super) fn draw(plot: &Plot, id: &str, description: &str) -> String {
-    let points = || plot.curves.iter().flat_map(|curve| &curve.line);
+    draw_dashed(plot, &[], id, description)
+}
+
+/// The picture with dashed lines without a name over the same axes.
+pub(super) fn draw_dashed(
+    plot: &Plot,
+    dashed: &[Vec<[f64; 2]>],
+    id: &str,
+    description: &str,
+) -> String {
+    let points = || {
+        let lines = plot.curves.iter().map(|curve| &curve.line);
+        lines.chain(dashed).flatten()
+    };
     let x_range = extent(points().map(|point| point[0]));
     let y_range = extent(points().map(|point| point[1]));
     let y_step = tick_step(y_range[1] - y_range[0], 6.0);
@@ -85,6 +98,13 @@ pub(super) fn draw(plot: &Plot, id: &str, description: &str) -> String {
         for dot in &curve.dots {
             drawing.circle("dot", [x.at(dot[0]), y.at(dot[1])], 1.4);
         }
+    }
+    for points in dashed {
+        let points: Vec<[f64; 2]> = points
+            .iter()
+            .map(|point| [x.at(point[0]), y.at(point[1])])
+            .collect();
+        drawing.curve("curve-dashed", &points);
     }
     for (at, name) in spread(names) {
         drawing.text("label", [RIGHT + 5.0, at + 3.5], Anchor::Start, name);

@@ -4,6 +4,8 @@
 
 mod curves;
 mod figures;
+mod head_scatter;
+mod scatter;
 
 use askama::Template;
 
@@ -39,6 +41,8 @@ struct BeamPart {
     label: String,
     facts: Vec<(String, String)>,
     figures: Vec<figures::Figure>,
+    scatter: Option<scatter::ScatterPart>,
+    head: Option<head_scatter::HeadPart>,
 }
 
 /// The page of a model on a day, self-contained HTML.
@@ -59,6 +63,8 @@ pub fn model_page(
             label: beam.label.clone(),
             facts: beam_facts(beam),
             figures: figures::of_beam(beam, index),
+            scatter: scatter::of_beam(beam, index),
+            head: head_scatter::of_beam(machine, beam, index),
         });
     let unapproved = (!machine.is_approved_on(today)).then(|| match &machine.approval {
         None => "Nobody has approved it.".to_owned(),

@@ -3,6 +3,7 @@
 use super::attention::beam_name;
 use super::beams_eye::{self, Picture};
 use super::deviation::{self, Deviation, Standing};
+use super::shaped_view::{self, ShapedView};
 use super::trace_view::{self, TraceView};
 use super::words::{Status, is_result, judgement, status};
 use crate::audit::{BeamEntry, Judgement, Verdict};
@@ -79,6 +80,7 @@ pub(super) struct BeamView {
     pub(super) obstacles: Vec<String>,
     pub(super) remarks: Vec<String>,
     pub(super) trace: Option<TraceView>,
+    pub(super) shaped: Option<ShapedView>,
     pub(super) depths: Vec<DepthView>,
     pub(super) point: Vec<Fact>,
     pub(super) squares: Vec<Fact>,
@@ -199,7 +201,7 @@ pub(super) fn view(beam: &BeamEntry, id: &str) -> BeamView {
         row: row(beam, id.to_owned(), true),
         not_a_result: !is_result(beam.verdict),
         open: !matches!(beam.verdict, Verdict::Within | Verdict::NotTreated),
-        picture: beams_eye::picture(&calculation.view, &format!("{id}-view")),
+        picture: beams_eye::picture(calculation, &format!("{id}-view")),
         deviation_words: drawn.as_ref().map_or_else(String::new, deviation::words),
         deviation_svg: drawn.map(|drawn| deviation::picture(&drawn, &format!("{id}-dev"))),
         judgement: judgement(beam),
@@ -211,6 +213,10 @@ pub(super) fn view(beam: &BeamEntry, id: &str) -> BeamView {
             .trace
             .as_ref()
             .map(|trace| trace_view::view(trace, beam)),
+        shaped: calculation
+            .shaped
+            .as_ref()
+            .map(|shaped| shaped_view::view(shaped, calculation.trace.as_ref())),
         depths: calculation
             .depths
             .iter()

@@ -1,9 +1,11 @@
 //! The beam's-eye view to scale: jaws, leaf openings, block outlines, axis and
 //! dose point at the isocentre plane, seen from the source in the collimator
-//! system. Where things are was worked out in `dose`.
+//! system. What a field with several apertures adds is drawn by `moving`; where
+//! things are was worked out in `dose`.
 
+use super::moving;
 use super::words::counted;
-use crate::dose::{BeamView, BlockOutline, LeafOpening};
+use crate::dose::{BeamCalculation, BeamView, BlockOutline, LeafOpening, Technique};
 use crate::report::number::{short, signed};
 use crate::report::svg::{Anchor, Drawing, Scale};
 
@@ -13,9 +15,9 @@ const HALF_WIDTHS_CM: [f64; 4] = [6.0, 11.0, 16.0, 21.0];
 const MOST_POINTS: usize = 1000;
 /// A bank with more leaf pairs is drawn with the first of them.
 const MOST_PAIRS: usize = 400;
-const PLOT: f64 = 240.0;
-const LEFT: f64 = 34.0;
-const TOP: f64 = 24.0;
+pub(super) const PLOT: f64 = 240.0;
+pub(super) const LEFT: f64 = 34.0;
+pub(super) const TOP: f64 = 24.0;
 const WIDTH: f64 = LEFT + PLOT + 8.0;
 const HEIGHT: f64 = TOP + PLOT + 36.0;
 
@@ -26,39 +28,64 @@ pub(super) struct Picture {
     pub(super) caption: String,
 }
 
-struct Axes {
-    half_cm: f64,
+/// Scales of the picture, and its half-width, cm.
+pub(super) struct Axes {
+    pub(super) half_cm: f64,
     x: Scale,
     y: Scale,
 }
 
 impl Axes {
-    fn at(&self, point: [f64; 2]) -> [f64; 2] {
+    pub(super) fn at(&self, point: [f64; 2]) -> [f64; 2] {
         [self.x.at(point[0]), self.y.at(point[1])]
     }
 }
 
 /// The picture; `None` when neither jaws, leaves nor blocks are known.
-pub(super) fn picture(view: &BeamView, id: &str) -> Option<Picture> {
+pub(super) fn picture(calculation: &BeamCalculation, id: &str) -> Option<Picture> {
+    let view = &calculation.view;
     let nothing = view.jaws_x_cm.is_none()
         && view.jaws_y_cm.is_none()
         && view.leaf_banks.iter().all(Vec::is_empty)
-        && view.blocks.is_empty();
+        && view.blocks.is_empty()
+        && view.last.is_none();
     if nothing {
         return None;
     }
-    let half_cm = half_width_cm(view);
+    let several = matches!(
+        calculation.technique,
+        Technique::Segmented | Technique::Dynamic | Technique::Arc
+    ) || view.last.is_some();
+    let shaped = calculation.shaped.as_ref().filter(|_| several);
+    let grey = shaped.and_then(|shaped| moving::grey(&shaped.fluence));
+    let half_cm = half_width_cm(view, grey.as_ref());
     let axes = Axes {
         half_cm,
         x: Scale::new([-half_cm, half_cm], [LEFT, LEFT + PLOT]),
         y: Scale::new([-half_cm, half_cm], [TOP + PLOT, TOP]),
     };
-    let mut drawing = Drawing::new(WIDTH, HEIGHT);
-    draw_openings(&mut drawing, &axes, view);
+    let legend_height = if several { moving::LEGEND_HEIGHT } else { 0.0 };
+    let mut drawing = Drawing::new(WIDTH, HEIGHT + legend_height);
+    match &grey {
+        Some(grey) => {
+            draw_background(&mut drawing, &axes);
+            grey.draw(&mut drawing, &axes);
+        }
+        None => draw_openings(&mut drawing, &axes, view),
+    }
     draw_blocks(&mut drawing, &axes, view);
+    if several {
+        moving::draw_apertures(&mut drawing, &axes, view);
+        moving::draw_legend(&mut drawing, view, grey.as_ref());
+    }
     draw_axes(&mut drawing, &axes);
     draw_point(&mut drawing, &axes, view);
-    let caption = caption(view, half_cm);
+    let seen = if several {
+        moving::words(view, grey.as_ref())
+    } else {
+        one_aperture(view)
+    };
+    let caption = caption(view, half_cm, seen, unplaced_point(calculation));
     let svg = drawing.finish(
         id,
         "bev",
@@ -68,11 +95,20 @@ pub(super) fn picture(view: &BeamView, id: &str) -> Option<Picture> {
     Some(Picture { svg, caption })
 }
 
-fn half_width_cm(view: &BeamView) -> f64 {
+fn half_width_cm(view: &BeamView, grey: Option<&moving::Grey>) -> f64 {
+    let last = view.last.as_ref();
     let jaws = [view.jaws_x_cm, view.jaws_y_cm];
-    let jaws = jaws.into_iter().flatten().flatten();
+    let jaws = jaws
+        .into_iter()
+        .chain(
+            last.into_iter()
+                .flat_map(|last| [last.jaws_x_cm, last.jaws_y_cm]),
+        )
+        .flatten()
+        .flatten();
     let blocks = view.blocks.iter().flat_map(|block| block.outline_cm.iter());
-    let leaves = view.leaf_banks.iter().flatten();
+    let banks = last.into_iter().flat_map(|last| &last.leaf_banks);
+    let leaves = view.leaf_banks.iter().chain(banks).flatten();
     let extent_cm = jaws
         .chain(view.point_cm.into_iter().flatten())
         .chain(blocks.flatten().copied())
@@ -81,17 +117,23 @@ fn half_width_cm(view: &BeamView) -> f64 {
             let sides = [leaf.x1_cm, leaf.x2_cm, leaf.y1_cm, leaf.y2_cm];
             sides.into_iter().filter(move |_| open)
         }))
+        .chain(grey.into_iter().flat_map(moving::Grey::edges_cm))
         .filter(|value| value.is_finite())
         .fold(0.0, |extent: f64, value| extent.max(value.abs()));
     let fits = |half: &f64| extent_cm <= half - 0.5;
     HALF_WIDTHS_CM.into_iter().find(fits).unwrap_or(31.0)
 }
 
+fn draw_background(drawing: &mut Drawing, axes: &Axes) {
+    let half = axes.half_cm;
+    drawing.rectangle("bev-closed", axes.at([-half, -half]), axes.at([half, half]));
+}
+
 fn draw_openings(drawing: &mut Drawing, axes: &Axes, view: &BeamView) {
     let half = axes.half_cm;
     let [x1, x2] = view.jaws_x_cm.unwrap_or([-half, half]);
     let [y1, y2] = view.jaws_y_cm.unwrap_or([-half, half]);
-    drawing.rectangle("bev-closed", axes.at([-half, -half]), axes.at([half, half]));
+    draw_background(drawing, axes);
     let single_bank = match view.leaf_banks.as_slice() {
         [] => None,
         [bank] => Some(bank.as_slice()),
@@ -209,7 +251,34 @@ fn draw_point(drawing: &mut Drawing, axes: &Axes, view: &BeamView) {
     drawing.line("bev-point", [x, y - 8.0], [x, y + 8.0]);
 }
 
-fn caption(view: &BeamView, half_cm: f64) -> String {
+/// What the caption says of leaves that stand still.
+fn one_aperture(view: &BeamView) -> Vec<String> {
+    match view.leaf_banks.len() {
+        0 => Vec::new(),
+        1 => vec!["leaf openings of the first control point".to_owned()],
+        banks => vec![format!(
+            "leaf openings of {banks} banks, first control point; the field is where all are open"
+        )],
+    }
+}
+
+/// What the caption says of a point that is not drawn.
+const fn unplaced_point(calculation: &BeamCalculation) -> &'static str {
+    match (&calculation.point, calculation.technique) {
+        (Some(_), Technique::Arc) => {
+            "the dose point is not drawn: it moves across this view as the gantry turns"
+        }
+        (Some(_), _) => "the dose point's place in this view is not known",
+        (None, _) => "no dose point",
+    }
+}
+
+fn caption(
+    view: &BeamView,
+    half_cm: f64,
+    seen: Vec<String>,
+    unplaced_point: &'static str,
+) -> String {
     let range = |name: &str, sides: [f64; 2]| {
         format!(
             "{name} {} to {} cm",
@@ -218,15 +287,28 @@ fn caption(view: &BeamView, half_cm: f64) -> String {
         )
     };
     let mut parts = Vec::new();
-    parts.extend(view.jaws_x_cm.map(|sides| range("X jaws", sides)));
-    parts.extend(view.jaws_y_cm.map(|sides| range("Y jaws", sides)));
-    match view.leaf_banks.len() {
-        0 => {}
-        1 => parts.push("leaf openings of the first control point".to_owned()),
-        banks => parts.push(format!(
-            "leaf openings of {banks} banks, first control point; the field is where all are open"
-        )),
+    let axes = [
+        (
+            "X jaws",
+            view.jaws_x_cm,
+            view.last.as_ref().map(|last| last.jaws_x_cm),
+        ),
+        (
+            "Y jaws",
+            view.jaws_y_cm,
+            view.last.as_ref().map(|last| last.jaws_y_cm),
+        ),
+    ];
+    for (name, first, last) in axes {
+        let first = first.map(|sides| range(name, sides));
+        let moved = last
+            .flatten()
+            .map(|sides| range(name, sides))
+            .filter(|last| first.as_ref() != Some(last));
+        parts.extend(first);
+        parts.extend(moved.map(|last| format!("at the end {last}")));
     }
+    parts.extend(seen);
     let shields = view.blocks.iter().filter(|block| block.shields_inside);
     let shields = shields.count();
     let apertures = view.blocks.len() - shields;
@@ -239,8 +321,11 @@ fn caption(view: &BeamView, half_cm: f64) -> String {
         parts.push(format!("{outlines}, shielded outside"));
     }
     let coarse = |block: &BlockOutline| block.outline_cm.len() > MOST_POINTS;
-    if view.leaf_banks.iter().any(|bank| bank.len() > MOST_PAIRS) || view.blocks.iter().any(coarse)
-    {
+    let last = view.last.as_ref().map(|last| last.leaf_banks.as_slice());
+    let abridged = moving::is_abridged(&view.leaf_banks)
+        || moving::is_abridged(last.unwrap_or_default())
+        || view.leaf_banks.iter().any(|bank| bank.len() > MOST_PAIRS);
+    if abridged || view.blocks.iter().any(coarse) {
         parts.push("drawn with a part of its points".to_owned());
     }
     if let Some([x, y]) = view.point_cm {
@@ -252,7 +337,7 @@ fn caption(view: &BeamView, half_cm: f64) -> String {
             place
         });
     } else {
-        parts.push("no dose point".to_owned());
+        parts.push(unplaced_point.to_owned());
     }
     parts.join("; ")
 }

@@ -50,6 +50,24 @@ impl Drawing {
         );
     }
 
+    /// A picture between two corners, stretched to them; `data_uri` must be one of ours.
+    pub(in crate::report) fn image(
+        &mut self,
+        class: &str,
+        from: [f64; 2],
+        to: [f64; 2],
+        data_uri: &str,
+    ) {
+        let _ = write!(
+            self.body,
+            "<image class=\"{class}\" x=\"{}\" y=\"{}\" width=\"{}\" height=\"{}\" preserveAspectRatio=\"none\" href=\"{data_uri}\"/>",
+            n(from[0].min(to[0])),
+            n(from[1].min(to[1])),
+            n((to[0] - from[0]).abs()),
+            n((to[1] - from[1]).abs()),
+        );
+    }
+
     /// A straight line.
     pub(in crate::report) fn line(&mut self, class: &str, from: [f64; 2], to: [f64; 2]) {
         let _ = write!(

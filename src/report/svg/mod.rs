@@ -4,7 +4,9 @@
 //! need no second drawing. What is drawn is decided in `report::page`.
 
 mod drawing;
+mod png;
 mod scale;
 
 pub(super) use drawing::{Anchor, Drawing};
+pub(super) use png::grey_picture;
 pub(super) use scale::{Scale, tick_step};

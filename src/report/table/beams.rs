@@ -2,7 +2,7 @@
 
 use super::{Cell, Column};
 use crate::audit::{BeamEntry, Judgement, PlanEntry};
-use crate::dose::{DepthCandidate, Method};
+use crate::dose::{DepthCandidate, Method, ShapedResult};
 
 /// What a row is made of.
 #[derive(Clone, Copy, Debug)]
@@ -264,11 +264,36 @@ pub(in crate::report) const BEAM_COLUMNS: &[Column<Getter>] = &[
         |r| joined(&r.beam.remarks),
     ),
     column(
+        "mean_leaf_gap_cm",
+        "mean gap of the open leaf pairs over leaf width and meterset, at the isocentre plane, cm; empty without leaves or when not integrated",
+        |r| Cell::number(shaped(r).and_then(|shaped| shaped.mean_leaf_gap_cm)),
+    ),
+    column(
+        "open_primary_percent",
+        "share of the independent dose that is primary through the opening, per cent; empty when not integrated",
+        |r| Cell::number(shaped(r).map(|shaped| shaped.shares.open_primary_percent)),
+    ),
+    column(
+        "scatter_percent",
+        "share of the independent dose that is phantom scatter of what came through the opening, per cent; empty when not integrated",
+        |r| Cell::number(shaped(r).map(|shaped| shaped.shares.open_scatter_percent)),
+    ),
+    column(
+        "transmission_percent",
+        "share of the independent dose that came through leaves and blocks, per cent; empty when not integrated",
+        |r| Cell::number(shaped(r).map(|shaped| shaped.shares.transmission_percent)),
+    ),
+    column(
         "run_id",
         "identifier of the run, the same in every file of the report",
         |r| Cell::word(r.run_id),
     ),
 ];
+
+/// What a scatter integration found.
+fn shaped<'b>(row: &'b BeamRow<'_>) -> Option<&'b ShapedResult> {
+    row.beam.calculation.shaped.as_ref()
+}
 
 fn joined(sentences: &[String]) -> Cell {
     if sentences.is_empty() {

@@ -2,6 +2,7 @@
 //! valid JSON, a page that escapes and needs no network, whole or not at all.
 
 mod folder;
+mod moving;
 mod page;
 mod record;
 mod sample;

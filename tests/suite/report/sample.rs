@@ -259,6 +259,7 @@ fn calculation(technique: Technique) -> BeamCalculation {
             leaf_banks: Vec::new(),
             blocks: Vec::new(),
             point_cm: Some([1.93, -1.93]),
+            last: None,
         },
     }
 }

@@ -3,8 +3,11 @@
 
 mod geometry;
 mod guards;
+mod moving_plans;
 mod plans;
 mod properties;
+mod shaped_model;
+mod shaped_plans;
 mod worked_examples;
 
 use std::path::PathBuf;

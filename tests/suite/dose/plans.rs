@@ -228,8 +228,14 @@ fn verify_leaves() {
     let result = calculate(&plan);
     assert_eq!(result.technique, Technique::Mlc);
     assert_close(result.x_cm.unwrap(), 12.0, 1e-12);
+    // The TG-71 model says nothing of leaves: no number, and the reason is the model's.
     assert_eq!(result.trace, None);
-    assert_eq!(kinds(&result), [ObstacleKind::Technique]);
+    assert_eq!(kinds(&result), [ObstacleKind::Model]);
+    let message = &result.obstacles[0].message;
+    assert!(
+        message.contains("the plan has the leaf bank MLCX"),
+        "{message}"
+    );
     // Leaves along y: the second bank at negative y, the first boundary at negative x.
     let mlcy = |positions_cm: [f64; 8]| {
         technique(|plan| {
@@ -285,9 +291,15 @@ fn verify_moves_without_dose() {
     assert_eq!(segmented.technique, Technique::Segmented);
     // A quarter of the meterset 10 cm wide, the rest 6 cm: 0.25 * 10 + 0.75 * 6 = 7.
     assert_close(segmented.x_cm.unwrap(), 7.0, 1e-12);
-    assert_eq!(kinds(&segmented), [ObstacleKind::Technique]);
     let moving = calculate(&with_third([0.0, 0.5, 1.0], [wide, narrow, narrow]));
     assert_eq!(moving.technique, Technique::Dynamic);
+    // The TG-71 model states no penumbra, so neither is calculated.
+    for result in [&segmented, &moving] {
+        assert_eq!(result.trace, None);
+        assert_eq!(kinds(result), [ObstacleKind::Model]);
+        let message = &result.obstacles[0].message;
+        assert!(message.contains("penumbra_sigma_cm"), "{message}");
+    }
     // Nothing delivered at all.
     let nothing = calculate(&with_third([0.0, 0.0, 0.0], [wide, wide, wide]));
     assert!(kinds(&nothing).contains(&ObstacleKind::Reading));
@@ -645,7 +657,7 @@ fn verify_averages_are_told() {
 }
 
 /// While the gantry turns the point has no one place in the beam: nothing is told that holds at one angle only,
-/// what the plan says of the point's depth is, and the technique alone is the obstacle.
+/// and neither one depth nor one SSD stands for the whole arc.
 #[test]
 fn verify_arc_has_no_one_geometry() {
     let mut plan = with_sets(vec![set(
@@ -653,18 +665,21 @@ fn verify_arc_has_no_one_geometry() {
         [Some(11.0), Some(9.0), None],
     )]);
     plan.beams[0].control_points[1].gantry_deg = Given::stated(180.0);
+    // An SSD at the first control point that the second merely inherits.
+    plan.beams[0].control_points[1].ssd_cm = Given::Inherited {
+        value: 90.0,
+        from_control_point: 0,
+    };
     let result = calculate(&plan);
     assert_eq!(result.technique, Technique::Arc);
-    assert_eq!(kinds(&result), [ObstacleKind::Technique]);
+    assert_eq!(kinds(&result), [ObstacleKind::Depth]);
     assert_eq!(
         (result.gantry_deg, result.gantry_end_deg),
         (Some(0.0), Some(180.0))
     );
     assert_eq!(result.point.unwrap().spd_cm, None);
     assert_eq!(result.view.point_cm, None);
-    let bases: Vec<DepthBasis> = result.depths.iter().map(|depth| depth.basis).collect();
-    assert_eq!(bases, [DepthBasis::Plan]);
-    assert_close(result.depths[0].effective_cm, 9.0, 1e-12);
+    assert_eq!(result.depths, []);
     assert_eq!(result.trace, None);
 }
 

@@ -2,7 +2,8 @@
 
 use super::course::{Course, ISOCENTRE_CM, PointStated, beam, beside_isocentre};
 use super::sample::Sample;
-use crate::builder::{AccessorySpec, BeamSpec, DepthSpec, DeviceSpec, Encoding};
+use super::shapes::rowan_leaves;
+use crate::builder::{AccessorySpec, BeamSpec, DepthSpec, Encoding};
 
 /// The samples of this file.
 pub(super) fn samples() -> Vec<Sample> {
@@ -257,19 +258,6 @@ fn tray() -> Sample {
         .treat(field(2, "Posterior", 180.0, 89.9), 1.4, -0.2)
         .sound("tray.dcm", "an empty block tray in each beam")
         .with_encoding(Encoding::ImplicitLittle)
-}
-
-/// The leaf bank of the ROWAN machines: 10 leaves of 1 cm, 40 of 0.5 cm, 10 of 1 cm.
-pub(super) fn rowan_leaves() -> DeviceSpec {
-    let outer = (-20..-10).map(f64::from);
-    let inner = (-20..20).map(|half| f64::from(half) / 2.0);
-    let other = (10..=20).map(f64::from);
-    DeviceSpec {
-        kind: "MLCX".to_owned(),
-        pairs: 60,
-        source_distance_cm: Some(50.0),
-        boundaries_cm: outer.chain(inner).chain(other).collect(),
-    }
 }
 
 fn parked_leaves() -> Sample {

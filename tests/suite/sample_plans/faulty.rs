@@ -95,7 +95,7 @@ fn deviating() -> Vec<Sample> {
 }
 
 /// The same number with the two digits before its point exchanged.
-fn transposed(meterset_mu: f64) -> f64 {
+pub(super) fn transposed(meterset_mu: f64) -> f64 {
     let mut digits: Vec<char> = format!("{meterset_mu:.1}").chars().collect();
     let units = digits.len() - 3;
     assert_ne!(digits[units - 1], digits[units], "it must be seen");

@@ -1,6 +1,6 @@
 //! What the audit says of each sample follows from how it was made: sound
-//! plans are within and have no finding; a planted fault is caught, and
-//! nothing else is found; without its fault the same plan is within.
+//! plans are within and have no finding; a planted fault is caught (but for the
+//! one that cannot be seen at its point), and nothing else is found; without its fault the same plan is within.
 
 use std::collections::BTreeSet;
 
@@ -83,7 +83,7 @@ fn verify_each_faulty_plan_is_within_without_its_fault() {
 #[test]
 fn verify_sound_plans_deviate_by_what_was_put_in() {
     for sample in all() {
-        if sample.verdict != Verdict::Within {
+        if !sample.is_sound() {
             continue;
         }
         let entry = audited(&sample.path, &sample.bytes());
@@ -110,7 +110,7 @@ fn verify_sound_plans_deviate_by_what_was_put_in() {
 #[test]
 fn verify_sound_plans_add_up_to_their_prescription() {
     for sample in all() {
-        if sample.verdict != Verdict::Within {
+        if !sample.is_sound() {
             continue;
         }
         let planned_gy: f64 = sample

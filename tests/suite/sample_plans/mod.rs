@@ -1,14 +1,18 @@
 //! The plans in `sample-plans/`: what they are, that the files there are
 //! exactly these, and what the audit says of each.
 
+mod arcs;
 mod clean;
 mod course;
 mod faulty;
+mod faulty_shaped;
 mod files;
 mod geometry_shown;
 mod judged;
 mod not_yet;
 mod sample;
+mod shaped;
+mod shapes;
 
 use self::sample::Sample;
 
@@ -16,7 +20,10 @@ use self::sample::Sample;
 fn all() -> Vec<Sample> {
     let mut samples = clean::samples();
     samples.extend(geometry_shown::samples());
+    samples.extend(shaped::samples());
+    samples.extend(arcs::samples());
     samples.extend(faulty::samples());
+    samples.extend(faulty_shaped::samples());
     samples.extend(not_yet::samples());
     samples
 }

@@ -47,6 +47,11 @@ impl Sample {
         self
     }
 
+    /// Whether it is a plan in order: no fault was planted, and its technique is calculated.
+    pub(super) fn is_sound(&self) -> bool {
+        self.verdict == Verdict::Within && self.sound.is_none()
+    }
+
     /// The row of `sample-plans/README.md`.
     pub(super) fn readme_row(&self) -> String {
         let checks: Vec<String> = self.checks.iter().map(|name| format!("`{name}`")).collect();

@@ -4,7 +4,7 @@
 
 use super::depth_track::DepthAt;
 use super::sum::{Standing, Sums};
-use crate::beam_model::{BeamModel, JawAxis, OffAxisKind};
+use crate::beam_model::{BeamModel, JawAxis, OffAxisKind, Penumbra};
 use crate::dose::text::number;
 use crate::dose::{Factor, FactorName, Input, RayPoint, Trace, Tray};
 
@@ -213,8 +213,8 @@ fn inputs(sums: &Sums, standing: &Standing<'_>, equivalent_side_cm: f64) -> Vec<
             exposure.open_fluence,
             "",
             of_field(&format!(
-                "1 in the open; edges blurred by a Gaussian of sigma {} cm",
-                number(standing.penumbra_sigma_cm)
+                "1 in the open; edges blurred by {}",
+                penumbra_text(&standing.penumbra)
             )),
         ),
         input(
@@ -247,4 +247,18 @@ fn inputs(sums: &Sums, standing: &Standing<'_>, equivalent_side_cm: f64) -> Vec<
                 .to_owned(),
         ),
     ]
+}
+
+/// The penumbra in words.
+fn penumbra_text(penumbra: &Penumbra) -> String {
+    let main = number(penumbra.sigma_cm);
+    if penumbra.tail_share == 0.0 {
+        return format!("a Gaussian of sigma {main} cm");
+    }
+    format!(
+        "two Gaussians, {} of sigma {main} cm and {} of sigma {} cm",
+        number(1.0 - penumbra.tail_share),
+        number(penumbra.tail_share),
+        number(penumbra.tail_sigma_cm)
+    )
 }

@@ -4,7 +4,7 @@
 
 use std::sync::Arc;
 
-use counterfoil::beam_model::{HeadScatter, JawAxis, LeafBank, MachineModel, Travel};
+use counterfoil::beam_model::{HeadScatter, JawAxis, LeafBank, MachineModel, Penumbra, Travel};
 use counterfoil::plan::{ControlPoint, DeviceKind, LeafAxis, LeafPositions, LimitingDevice, Plan};
 use counterfoil::quantity::Given;
 
@@ -46,7 +46,11 @@ pub(super) fn shaped_machine() -> MachineModel {
         });
     }
     machine.collimation.leaf_banks = vec![bank(LeafAxis::X)];
-    machine.beams[0].penumbra_sigma_cm = Some(0.18);
+    machine.beams[0].penumbra = Some(Penumbra {
+        sigma_cm: 0.18,
+        tail_share: 0.0,
+        tail_sigma_cm: 0.18,
+    });
     machine.beams[0].extra_focal_distance_cm = Some(12.0);
     fit_head(&mut machine);
     machine

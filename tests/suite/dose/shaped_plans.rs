@@ -86,7 +86,7 @@ fn verify_what_a_model_must_state_is_named() {
     };
     for (message, wanted) in [
         (
-            refusal(&plan, |machine| machine.beams[0].penumbra_sigma_cm = None),
+            refusal(&plan, |machine| machine.beams[0].penumbra = None),
             "penumbra_sigma_cm",
         ),
         (

@@ -269,11 +269,12 @@ impl BeamModel {
     }
 
     /// Attenuation of the primary as the zero-field terms tell it between 10 and 20 cm, ln(K(10, 0)/K(20, 0))/10,
-    /// per cm; `None` when the tables do not reach so far.
+    /// per cm; `None` when the tables do not reach so far or hold doses that are not positive.
     #[must_use]
     pub fn primary_attenuation_per_cm(&self) -> Option<f64> {
         let primary = |depth_cm| Some(self.scatter_at(depth_cm).ok()?.primary());
-        Some((primary(10.0)? / primary(20.0)?).ln() / 10.0)
+        let per_cm = (primary(10.0)? / primary(20.0)?).ln() / 10.0;
+        per_cm.is_finite().then_some(per_cm)
     }
 
     /// Transmission of a tray by its ID.

@@ -67,7 +67,10 @@ pub(super) fn fit(radii_cm: &[f64], doses: &[f64]) -> ZeroField {
     }
     let mut form = best.1;
     let smallest = doses.first().copied().unwrap_or_default();
-    form.dose = form.dose.clamp(LEAST_SHARE * smallest, smallest);
+    // A dose that is not positive stands in a damaged table only, and bounds nothing.
+    if smallest > 0.0 {
+        form.dose = form.dose.clamp(LEAST_SHARE * smallest, smallest);
+    }
     form
 }
 
@@ -112,6 +115,14 @@ mod tests {
         let radii_cm = [1.7, 2.2, 2.8, 3.4, 4.5];
         let found = fit(&radii_cm, &radii_cm.map(|radius_cm| form.at(radius_cm)));
         assert!((found.dose - 0.75).abs() < 5e-4, "{found:?}");
+    }
+
+    /// Doses that are not positive (a damaged table) stop nothing.
+    #[test]
+    fn verify_doses_that_are_not_positive_give_a_form() {
+        for doses in [[-0.01, -0.02, 0.5, 0.6], [0.0; 4], [f64::NAN; 4]] {
+            assert!(fit(&[1.7, 2.2, 2.8, 3.4], &doses).half_radius_cm > 0.0);
+        }
     }
 
     /// Falling doses (a damaged table) give a constant, never a rise towards zero field.

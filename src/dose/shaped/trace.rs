@@ -44,7 +44,7 @@ pub(super) fn trace_of(
     // The factor is a weighted mean of products; the numbers beside it are means of their own.
     let means = if several {
         format!(
-            "; mean of {} moments, weighted with the meterset and the factors before it, of which these are plain means",
+            "; the factor is the mean of {} moments weighted with the meterset and the factors before it, the numbers here are plain means",
             sums.moments
         )
     } else {

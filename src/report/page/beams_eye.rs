@@ -97,31 +97,41 @@ pub(super) fn picture(calculation: &BeamCalculation, id: &str) -> Option<Picture
 
 fn half_width_cm(view: &BeamView, grey: Option<&moving::Grey>) -> f64 {
     let last = view.last.as_ref();
-    let jaws = [view.jaws_x_cm, view.jaws_y_cm];
-    let jaws = jaws
-        .into_iter()
-        .chain(
-            last.into_iter()
-                .flat_map(|last| [last.jaws_x_cm, last.jaws_y_cm]),
-        )
-        .flatten()
-        .flatten();
+    let begins = aperture_extents_cm(view.jaws_x_cm, view.jaws_y_cm, &view.leaf_banks);
+    let ends =
+        last.map(|last| aperture_extents_cm(last.jaws_x_cm, last.jaws_y_cm, &last.leaf_banks));
     let blocks = view.blocks.iter().flat_map(|block| block.outline_cm.iter());
-    let banks = last.into_iter().flat_map(|last| &last.leaf_banks);
-    let leaves = view.leaf_banks.iter().chain(banks).flatten();
-    let extent_cm = jaws
+    let extent_cm = begins
+        .into_iter()
+        .chain(ends.into_iter().flatten())
         .chain(view.point_cm.into_iter().flatten())
         .chain(blocks.flatten().copied())
-        .chain(leaves.flat_map(|leaf| {
-            let open = leaf.x2_cm > leaf.x1_cm && leaf.y2_cm > leaf.y1_cm;
-            let sides = [leaf.x1_cm, leaf.x2_cm, leaf.y1_cm, leaf.y2_cm];
-            sides.into_iter().filter(move |_| open)
-        }))
         .chain(grey.into_iter().flat_map(moving::Grey::edges_cm))
         .filter(|value| value.is_finite())
         .fold(0.0, |extent: f64, value| extent.max(value.abs()));
     let fits = |half: &f64| extent_cm <= half - 0.5;
     HALF_WIDTHS_CM.into_iter().find(fits).unwrap_or(31.0)
+}
+
+/// How far jaws and the leaf openings inside them reach, cm.
+fn aperture_extents_cm(
+    jaws_x_cm: Option<[f64; 2]>,
+    jaws_y_cm: Option<[f64; 2]>,
+    leaf_banks: &[Vec<LeafOpening>],
+) -> Vec<f64> {
+    let unlimited = [f64::NEG_INFINITY, f64::INFINITY];
+    let (x, y) = (
+        jaws_x_cm.unwrap_or(unlimited),
+        jaws_y_cm.unwrap_or(unlimited),
+    );
+    let leaves = leaf_banks.iter().flatten();
+    let openings = leaves.filter_map(|leaf| within(leaf, x, y));
+    let jaws = [jaws_x_cm, jaws_y_cm];
+    openings
+        .flatten()
+        .flatten()
+        .chain(jaws.into_iter().flatten().flatten())
+        .collect()
 }
 
 fn draw_background(drawing: &mut Drawing, axes: &Axes) {

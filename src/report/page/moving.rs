@@ -74,55 +74,69 @@ impl Grey {
     }
 }
 
-/// First and last aperture, each with the jaws of its own, first over last.
-pub(super) fn draw_apertures(drawing: &mut Drawing, axes: &Axes, view: &BeamView) {
-    if let Some(last) = &view.last {
-        let jaws = [last.jaws_x_cm, last.jaws_y_cm];
-        let moved = jaws != [view.jaws_x_cm, view.jaws_y_cm];
-        if moved {
-            draw_jaws(drawing, axes, jaws, "bev-jaws-last");
+/// One aperture's lines, in picture units.
+struct Lines {
+    /// Corners of the jaws, when some are known.
+    jaws: Option<[[f64; 2]; 2]>,
+    /// Outlines of the leaf openings inside the jaws; none where there are no leaves: the jaws are the aperture then.
+    leaves: Vec<Vec<[f64; 2]>>,
+}
+
+impl Lines {
+    fn new(axes: &Axes, jaws_cm: [Option<[f64; 2]>; 2], leaf_banks: &[Vec<LeafOpening>]) -> Self {
+        let limits_cm = [-axes.half_cm, axes.half_cm];
+        let [x, y] = jaws_cm.map(|sides| sides.unwrap_or(limits_cm));
+        let known = jaws_cm.iter().any(Option::is_some) && x[1] > x[0] && y[1] > y[0];
+        let most = MOST_PAIRS[usize::from(leaf_banks.len() > 1)];
+        let banks: Vec<Vec<LeafOpening>> = leaf_banks
+            .iter()
+            .map(|bank| bank.iter().take(most).copied().collect())
+            .collect();
+        let polygons = if banks.is_empty() {
+            Vec::new()
+        } else {
+            outlines(jaws_cm, &banks, limits_cm)
+        };
+        Self {
+            jaws: known.then(|| [axes.at([x[0], y[0]]), axes.at([x[1], y[1]])]),
+            leaves: polygons
+                .iter()
+                .map(|corners| corners.iter().map(|corner| axes.at(*corner)).collect())
+                .collect(),
         }
-        draw_outlines(drawing, axes, jaws, &last.leaf_banks, "bev-last");
     }
-    let jaws = [view.jaws_x_cm, view.jaws_y_cm];
-    draw_jaws(drawing, axes, jaws, "bev-jaws");
-    draw_outlines(drawing, axes, jaws, &view.leaf_banks, "bev-first");
-}
 
-fn draw_jaws(drawing: &mut Drawing, axes: &Axes, jaws: [Option<[f64; 2]>; 2], class: &str) {
-    let [x, y] = jaws.map(|sides| sides.unwrap_or([-axes.half_cm, axes.half_cm]));
-    if jaws.iter().any(Option::is_some) && x[1] > x[0] && y[1] > y[0] {
-        let corners = [axes.at([x[0], y[0]]), axes.at([x[1], y[1]])];
-        drawing.rectangle("bev-halo", corners[0], corners[1]);
-        drawing.rectangle(class, corners[0], corners[1]);
+    fn draw(&self, drawing: &mut Drawing, [jaws, leaves]: [&str; 2]) {
+        if let Some([from, to]) = self.jaws {
+            drawing.rectangle(jaws, from, to);
+        }
+        for polygon in &self.leaves {
+            drawing.outline(leaves, polygon);
+        }
     }
 }
 
-fn draw_outlines(
-    drawing: &mut Drawing,
-    axes: &Axes,
-    jaws_cm: [Option<[f64; 2]>; 2],
-    leaf_banks: &[Vec<LeafOpening>],
-    class: &str,
-) {
-    if leaf_banks.is_empty() {
-        // The jaws are the aperture, and they are drawn.
-        return;
+/// First and last aperture. Both halos lie under both lines, and the dashes over the solid line, so that both show
+/// where they coincide.
+pub(super) fn draw_apertures(drawing: &mut Drawing, axes: &Axes, view: &BeamView) {
+    let first_jaws = [view.jaws_x_cm, view.jaws_y_cm];
+    let first = Lines::new(axes, first_jaws, &view.leaf_banks);
+    let last = view.last.as_ref().map(|last| {
+        let jaws = [last.jaws_x_cm, last.jaws_y_cm];
+        let mut lines = Lines::new(axes, jaws, &last.leaf_banks);
+        if jaws == first_jaws {
+            lines.jaws = None;
+        }
+        lines
+    });
+    let halos = ["bev-halo"; 2];
+    first.draw(drawing, halos);
+    if let Some(last) = &last {
+        last.draw(drawing, halos);
     }
-    let most = MOST_PAIRS[usize::from(leaf_banks.len() > 1)];
-    let banks: Vec<Vec<LeafOpening>> = leaf_banks
-        .iter()
-        .map(|bank| bank.iter().take(most).copied().collect())
-        .collect();
-    let polygons: Vec<Vec<[f64; 2]>> = outlines(jaws_cm, &banks, [-axes.half_cm, axes.half_cm])
-        .iter()
-        .map(|corners| corners.iter().map(|corner| axes.at(*corner)).collect())
-        .collect();
-    for polygon in &polygons {
-        drawing.outline("bev-halo", polygon);
-    }
-    for polygon in &polygons {
-        drawing.outline(class, polygon);
+    first.draw(drawing, ["bev-jaws", "bev-first"]);
+    if let Some(last) = &last {
+        last.draw(drawing, ["bev-jaws-last", "bev-last"]);
     }
 }
 

@@ -8,10 +8,11 @@ use std::path::Path;
 use counterfoil::audit::{BeamEntry, Verdict};
 use counterfoil::beam_model::{MachineModel, load_machine};
 use counterfoil::dose::{
-    BeamCalculation, BeamRequest, ControlPointDose, FluenceImage, ModelAnswer, ShapedResult,
-    Shares, StepLimits, Technique, calculate_beam,
+    BeamCalculation, BeamRequest, ControlPointDose, FactorName, FluenceImage, ModelAnswer,
+    ShapedResult, Shares, StepLimits, Technique, calculate_beam,
 };
 use counterfoil::plan::{Plan, read_plan};
+use counterfoil::quantity::PointSquare;
 use counterfoil::settings::Site;
 
 use super::sample::{self, Folder};
@@ -450,4 +451,39 @@ fn verify_an_image_that_does_not_fit_its_numbers_is_not_drawn() {
     let mut calculation = typed_arc();
     calculation.shaped.as_mut().unwrap().fluence.columns = 7;
     assert!(!page(calculation).contains("<image"));
+}
+
+/// What a person can redo: F(A) from the tables at the square with as much scatter, the factors of an interval from its
+/// row, and the product from the intervals. On the axis and without couch or tray, so that nothing else counts.
+#[test]
+fn verify_a_trace_can_be_redone_from_what_it_says() {
+    let machine = rowan();
+    let beam = &machine.beams[0];
+    let result = calculated(&letter_plan());
+    let (trace, shaped) = (result.trace.unwrap(), result.shaped.unwrap());
+    let input = |symbol: &str| trace.input(symbol).unwrap().value;
+    let factor = |name| trace.factor(name).unwrap().value;
+
+    let side = PointSquare::new(input("s"));
+    let table = beam.tpr(input("d_eff"), side).unwrap().value * beam.sp(side).unwrap().value;
+    let by_table = table * (input("Phi_open") + input("Phi_leak"));
+    let in_phantom = factor(FactorName::ApertureInPhantom);
+    // Between tabulated squares the table is read linearly, the kernel along its own curve.
+    assert!(
+        (by_table / in_phantom - 1.0).abs() < 2e-3,
+        "{by_table} {in_phantom}"
+    );
+
+    let mut sum = 0.0;
+    for interval in &shaped.intervals {
+        let by_hand = interval.meterset_percent / 100.0
+            * beam.output.dose_per_mu_cgy
+            * (beam.output.source_distance_cm / interval.spd_cm).powi(2)
+            * interval.head_scatter
+            * interval.in_phantom;
+        assert!((by_hand / interval.dose_per_mu_cgy - 1.0).abs() < 1e-12);
+        sum += by_hand;
+    }
+    assert_eq!(shaped.intervals.len(), 2);
+    assert!((sum / trace.dose_per_mu_cgy - 1.0).abs() < 1e-12);
 }

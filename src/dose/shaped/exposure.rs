@@ -45,22 +45,28 @@ pub(super) fn expose(
     sum
 }
 
-/// Open primary fluence, blurred, at a place this far from the point, cm in the point's plane.
-pub(super) fn open_fluence_beside(
+/// Open primary fluence, blurred, at places this far from the point, cm in the point's plane; none of them is
+/// further than `reach_cm`.
+pub(super) fn open_fluence_beside<const PLACES: usize>(
     opening: &Opening,
     ray: RayPoint,
-    shift_cm: [f64; 2],
+    (shifts_cm, reach_cm): (&[[f64; 2]; PLACES], f64),
     sigma_cm: f64,
-) -> f64 {
-    let patches = opening.patches.iter().filter(|patch| patch.open != 0.0);
-    patches
-        .map(|patch| {
-            let (x_cm, y_cm) = seen_from(patch, ray);
+) -> [f64; PLACES] {
+    let mut sums = [0.0; PLACES];
+    let far_cm = FAR_SIGMAS * sigma_cm + reach_cm;
+    for patch in opening.patches.iter().filter(|patch| patch.open != 0.0) {
+        let (x_cm, y_cm) = seen_from(patch, ray);
+        if y_cm[0] > far_cm || y_cm[1] < -far_cm || x_cm[0] > far_cm || x_cm[1] < -far_cm {
+            continue;
+        }
+        for (sum, shift_cm) in sums.iter_mut().zip(shifts_cm) {
             let x_cm = x_cm.map(|edge| edge - shift_cm[0]);
             let y_cm = y_cm.map(|edge| edge - shift_cm[1]);
-            patch.open * blurred(x_cm, y_cm, sigma_cm)
-        })
-        .sum()
+            *sum += patch.open * blurred(x_cm, y_cm, sigma_cm);
+        }
+    }
+    sums
 }
 
 /// A rectangle's edges from the point, in the point's plane.

@@ -35,6 +35,23 @@ pub(super) struct Standing<'a> {
     pub(super) couch: bool,
 }
 
+/// Where the fluence beside the point is looked at, as shares of the margin: along the axes half-way and at its end,
+/// between them at three quarters. Blurred by the penumbra, a leaf edge is half a centimetre wide.
+const PLACES: [[f64; 2]; 12] = [
+    [0.5, 0.0],
+    [-0.5, 0.0],
+    [0.0, 0.5],
+    [0.0, -0.5],
+    [1.0, 0.0],
+    [-1.0, 0.0],
+    [0.0, 1.0],
+    [0.0, -1.0],
+    [0.53, 0.53],
+    [-0.53, 0.53],
+    [0.53, -0.53],
+    [-0.53, -0.53],
+];
+
 /// Why the moments could not be added up.
 #[derive(Clone, Debug, PartialEq)]
 pub(super) enum SumError {
@@ -116,8 +133,8 @@ pub(super) struct Sums {
     pub(super) exposure: Exposure,
     /// Least depth, as the build-up counts it, cm.
     pub(super) least_depth_cm: f64,
-    /// Open fluence beside the point, in four directions.
-    pub(super) beside: [f64; 4],
+    /// Open fluence at [`PLACES`] beside the point.
+    pub(super) beside: [f64; PLACES.len()],
     /// Gap area over gap width of the leaves.
     pub(super) gap_area_cm2: f64,
     pub(super) gap_width_cm: f64,
@@ -298,7 +315,7 @@ impl Sums {
             jaw_side_cm: 0.0,
             exposure: Exposure::default(),
             least_depth_cm: f64::INFINITY,
-            beside: [0.0; 4],
+            beside: [0.0; PLACES.len()],
             gap_area_cm2: 0.0,
             gap_width_cm: 0.0,
             couch_share: 0.0,
@@ -341,15 +358,11 @@ impl Sums {
         self.exposure.leak_scatter += weight * at.exposure.leak_scatter;
         self.least_depth_cm = self.least_depth_cm.min(at.least_depth_cm);
         let margin_cm = standing.margin_cm;
-        let shifts = [
-            [margin_cm, 0.0],
-            [-margin_cm, 0.0],
-            [0.0, margin_cm],
-            [0.0, -margin_cm],
-        ];
-        for (sum, shift_cm) in self.beside.iter_mut().zip(shifts) {
-            *sum +=
-                weight * open_fluence_beside(opening, ray, shift_cm, standing.penumbra_sigma_cm);
+        let places_cm = PLACES.map(|place| place.map(|share| share * margin_cm));
+        let sigma_cm = standing.penumbra_sigma_cm;
+        let beside = open_fluence_beside(opening, ray, (&places_cm, margin_cm), sigma_cm);
+        for (sum, fluence) in self.beside.iter_mut().zip(beside) {
+            *sum += weight * fluence;
         }
         self.gap_area_cm2 += weight * opening.gap_area_cm2;
         self.gap_width_cm += weight * opening.gap_width_cm;

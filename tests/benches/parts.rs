@@ -54,21 +54,30 @@ fn arcs() -> Vec<u8> {
     spec.bytes()
 }
 
+/// One modulated arc that is calculated: 178 control points, 60 leaf pairs.
+fn one_arc() -> Vec<u8> {
+    fs::read(root().join("sample-plans/modulated-arc.dcm")).expect("a sample plan")
+}
+
 fn four_fields() -> Vec<u8> {
     fs::read(root().join("sample-plans/four-field-box.dcm")).expect("a sample plan")
 }
 
-fn plans() -> [(&'static str, Vec<u8>); 2] {
-    [("two arcs", arcs()), ("four fields", four_fields())]
+fn plans() -> [(&'static str, Vec<u8>); 3] {
+    [
+        ("two arcs", arcs()),
+        ("four fields", four_fields()),
+        ("one arc", one_arc()),
+    ]
 }
 
-#[divan::bench(args = [0, 1])]
+#[divan::bench(args = [0, 1, 2])]
 fn identifies(bencher: Bencher<'_, '_>, which: usize) {
     let (_, bytes) = &plans()[which];
     bencher.bench(|| identify(black_box(bytes)));
 }
 
-#[divan::bench(args = [0, 1])]
+#[divan::bench(args = [0, 1, 2])]
 fn fingerprints(bencher: Bencher<'_, '_>, which: usize) {
     let (_, bytes) = &plans()[which];
     bencher
@@ -76,7 +85,7 @@ fn fingerprints(bencher: Bencher<'_, '_>, which: usize) {
         .bench(|| sha256_hex(black_box(bytes)));
 }
 
-#[divan::bench(args = [0, 1])]
+#[divan::bench(args = [0, 1, 2])]
 fn reads(bencher: Bencher<'_, '_>, which: usize) {
     let (_, bytes) = &plans()[which];
     bencher
@@ -84,7 +93,7 @@ fn reads(bencher: Bencher<'_, '_>, which: usize) {
         .bench(|| read_plan(black_box(bytes)).map(|plan| plan.beams.len()));
 }
 
-#[divan::bench(args = [0, 1])]
+#[divan::bench(args = [0, 1, 2])]
 fn audits(bencher: Bencher<'_, '_>, which: usize) {
     let (_, bytes) = &plans()[which];
     let plan = read_plan(bytes).expect("reads");

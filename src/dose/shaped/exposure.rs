@@ -46,22 +46,27 @@ pub(super) fn expose(
     sum
 }
 
-/// Open primary fluence, blurred, at a place this far from the point, cm in the point's plane.
-pub(super) fn open_fluence_beside(
+/// Open primary fluence, blurred, at places this far from the point, cm in the point's plane; none of them is
+/// further than `reach_cm`.
+pub(super) fn open_fluence_beside<const PLACES: usize>(
     opening: &Opening,
     ray: RayPoint,
-    shift_cm: [f64; 2],
+    (shifts_cm, reach_cm): (&[[f64; 2]; PLACES], f64),
     penumbra: &Penumbra,
-) -> f64 {
-    let patches = opening.patches.iter().filter(|patch| patch.open != 0.0);
-    patches
-        .map(|patch| {
-            let (mut x, mut y) = seen_from(patch, ray);
-            x.at_cm = x.at_cm.map(|edge| edge - shift_cm[0]);
-            y.at_cm = y.at_cm.map(|edge| edge - shift_cm[1]);
-            patch.open * blurred(x, y, penumbra)
-        })
-        .sum()
+) -> [f64; PLACES] {
+    let mut sums = [0.0; PLACES];
+    let far_cm = FAR_SIGMAS * penumbra.tail_sigma_cm + reach_cm;
+    for patch in opening.patches.iter().filter(|patch| patch.open != 0.0) {
+        let (x, y) = seen_from(patch, ray);
+        if x.is_beyond(far_cm) || y.is_beyond(far_cm) {
+            continue;
+        }
+        for (sum, shift_cm) in sums.iter_mut().zip(shifts_cm) {
+            let (x, y) = (x.seen_from(shift_cm[0]), y.seen_from(shift_cm[1]));
+            *sum += patch.open * blurred(x, y, penumbra);
+        }
+    }
+    sums
 }
 
 /// Two edges of a rectangle from the point, in the point's plane, and how far each moves in the step, either way.
@@ -69,6 +74,23 @@ pub(super) fn open_fluence_beside(
 struct Sides {
     at_cm: [f64; 2],
     travel_cm: [f64; 2],
+}
+
+impl Sides {
+    /// Whether all of it lies further than this from the point, cm.
+    #[inline]
+    fn is_beyond(self, far_cm: f64) -> bool {
+        self.at_cm[0] - self.travel_cm[0] > far_cm || self.at_cm[1] + self.travel_cm[1] < -far_cm
+    }
+
+    /// The same edges from a place this far from the point, cm.
+    #[inline]
+    fn seen_from(self, shift_cm: f64) -> Self {
+        Self {
+            at_cm: self.at_cm.map(|edge_cm| edge_cm - shift_cm),
+            ..self
+        }
+    }
 }
 
 #[inline]
@@ -89,10 +111,7 @@ fn seen_from(patch: &Patch, ray: RayPoint) -> (Sides, Sides) {
 #[inline]
 fn blurred(x: Sides, y: Sides, penumbra: &Penumbra) -> f64 {
     let far_cm = FAR_SIGMAS * penumbra.tail_sigma_cm;
-    let out_of_reach = |side: Sides| {
-        side.at_cm[0] - side.travel_cm[0] > far_cm || side.at_cm[1] + side.travel_cm[1] < -far_cm
-    };
-    if out_of_reach(y) || out_of_reach(x) {
+    if x.is_beyond(far_cm) || y.is_beyond(far_cm) {
         return 0.0;
     }
     let gaussian = |sigma_cm| between(x, sigma_cm) * between(y, sigma_cm);

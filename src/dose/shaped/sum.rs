@@ -37,6 +37,23 @@ pub(super) struct Standing<'a> {
     pub(super) couch: bool,
 }
 
+/// Where the fluence beside the point is looked at, as shares of the margin: along the axes half-way and at its end,
+/// between them at three quarters. Blurred by the penumbra, a leaf edge is half a centimetre wide.
+const PLACES: [[f64; 2]; 12] = [
+    [0.5, 0.0],
+    [-0.5, 0.0],
+    [0.0, 0.5],
+    [0.0, -0.5],
+    [1.0, 0.0],
+    [-1.0, 0.0],
+    [0.0, 1.0],
+    [0.0, -1.0],
+    [0.53, 0.53],
+    [-0.53, 0.53],
+    [0.53, -0.53],
+    [-0.53, -0.53],
+];
+
 /// Why the moments could not be added up.
 #[derive(Clone, Debug, PartialEq)]
 pub(super) enum SumError {
@@ -120,8 +137,8 @@ pub(super) struct Sums {
     pub(super) least_depth_cm: f64,
     /// Dose while the jaws stand below the smallest opening of the Sc table, in units of `couch`.
     pub(super) below_table: Parts,
-    /// Open fluence beside the point, in four directions.
-    pub(super) beside: [f64; 4],
+    /// Open fluence at [`PLACES`] beside the point.
+    pub(super) beside: [f64; PLACES.len()],
     /// Gap area over gap width of the leaves.
     pub(super) gap_area_cm2: f64,
     pub(super) gap_width_cm: f64,
@@ -331,7 +348,7 @@ impl Sums {
             exposure: Exposure::default(),
             least_depth_cm: f64::INFINITY,
             below_table: Parts::default(),
-            beside: [0.0; 4],
+            beside: [0.0; PLACES.len()],
             gap_area_cm2: 0.0,
             gap_width_cm: 0.0,
             couch_share: 0.0,
@@ -378,14 +395,10 @@ impl Sums {
         self.exposure.leak_scatter += weight * at.exposure.leak_scatter;
         self.least_depth_cm = self.least_depth_cm.min(at.least_depth_cm);
         let margin_cm = standing.margin_cm;
-        let shifts = [
-            [margin_cm, 0.0],
-            [-margin_cm, 0.0],
-            [0.0, margin_cm],
-            [0.0, -margin_cm],
-        ];
-        for (sum, shift_cm) in self.beside.iter_mut().zip(shifts) {
-            *sum += weight * open_fluence_beside(opening, ray, shift_cm, &standing.penumbra);
+        let places_cm = PLACES.map(|place| place.map(|share| share * margin_cm));
+        let beside = open_fluence_beside(opening, ray, (&places_cm, margin_cm), &standing.penumbra);
+        for (sum, fluence) in self.beside.iter_mut().zip(beside) {
+            *sum += weight * fluence;
         }
         self.gap_area_cm2 += weight * opening.gap_area_cm2;
         self.gap_width_cm += weight * opening.gap_width_cm;

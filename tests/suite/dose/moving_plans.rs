@@ -7,7 +7,7 @@ use counterfoil::plan::{
 };
 use counterfoil::quantity::{Given, Patient, Point};
 
-use super::shaped_model::{MLCX, move_leaves, put_leaves, shaped_machine, tips};
+use super::shaped_model::{LEAF_END_CM, MLCX, move_leaves, put_leaves, shaped_machine, tips};
 use super::{assert_close, calculate_with, kinds, plain_plan, plan_with, verified_cgy_per_mu};
 
 fn shaped(plan: &Plan) -> BeamCalculation {
@@ -115,6 +115,48 @@ fn verify_a_sliding_gap_is_the_mean_of_its_places() {
         .sum::<f64>()
         / 200.0;
     assert_close(verified_cgy_per_mu(&moving) / mean, 1.0, 5e-4);
+}
+
+/// Two openings with 0.3 of the meterset each leave a strip from 0.3 to 0.8 cm beside the point to the third, with 0.4.
+/// Blurred with 0.18 cm (F the normal distribution): at the point 0.4 + 0.3 F(0.3/0.18) = 0.686; 0.53 cm beside it
+/// 0.4 + 0.3 F(-0.23/0.18) + 0.3 F(-0.27/0.18) = 0.450, 34.4 % less; 1 cm beside it 0.4 + 0.3 F(0.2/0.18) = 0.66 again.
+/// With the strip only where y is above 0 and the point 0.25 cm below: F(0.25/0.18) = 0.918 of 1 and the rest of 0.686, so
+/// 0.974; 0.53 cm to the side and 0.28 cm above the edge F(0.28/0.18) = 0.940 of 0.450 and the rest of 1: 0.483, 50.4 % less.
+#[test]
+fn verify_a_dip_of_the_fluence_beside_the_point() {
+    let strip = |wanted: fn(f64) -> bool, z_cm: f64| {
+        let beside =
+            |side: [f64; 2]| move |y_cm: f64| if wanted(y_cm) { side } else { [-4.0, 4.0] };
+        let openings = [
+            tips(beside([-4.0, 0.3 - LEAF_END_CM])),
+            tips(beside([0.8 + LEAF_END_CM, 4.0])),
+            tips(|_| [-4.0, 4.0]),
+        ];
+        let [one, two, three] = &openings;
+        let mut plan = with_opening(one);
+        plan.fraction_groups[0].beams[0].specification_point =
+            Given::stated(Point::new(1.0, -2.0, z_cm));
+        let points = [
+            (0.0, one),
+            (0.3, one),
+            (0.3, two),
+            (0.6, two),
+            (0.6, three),
+            (1.0, three),
+        ];
+        put_points(&mut plan, &points, |point, opening| {
+            move_leaves(point, opening)
+        });
+        shaped(&plan)
+    };
+    for (result, wanted_percent) in [
+        (strip(|_| true, 30.0), 34.4),
+        (strip(|y_cm| y_cm > 0.0, 29.75), 50.4),
+    ] {
+        assert_eq!(kinds(&result), [ObstacleKind::FieldEdge]);
+        let change_percent = result.shaped.unwrap().fluence_change_percent;
+        assert_close(change_percent, wanted_percent, 0.5);
+    }
 }
 
 /// Control points of an arc: weight, gantry angle, SSD.

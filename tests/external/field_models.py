@@ -467,25 +467,3 @@ def outcome_of(row):
         independent_dose_gy=number("independent_dose_gy"),
     )
 
-
-def distance_to_edge(rectangles, point):
-    """Distance of a point from the outline of what these rectangles open together, cm: negative outside.
-
-    The open area is cut along every edge into cells; the nearest cell that no rectangle holds tells the
-    distance, and so does the outer bound.
-    """
-    px, py = point[:2]
-    far = 100.0
-    xs = sorted({x for one in rectangles for x in one[:2]} | {-far, far})
-    ys = sorted({y for one in rectangles for y in one[2:]} | {-far, far})
-
-    def held(x, y):
-        return any(x1 < x < x2 and y1 < y < y2 for x1, x2, y1, y2 in rectangles)
-
-    nearest = {True: math.inf, False: math.inf}
-    for x1, x2 in zip(xs, xs[1:]):
-        for y1, y2 in zip(ys, ys[1:]):
-            away = math.hypot(max(x1 - px, 0, px - x2), max(y1 - py, 0, py - y2))
-            inside = held((x1 + x2) / 2, (y1 + y2) / 2)
-            nearest[inside] = min(nearest[inside], away)
-    return nearest[False] if nearest[True] == 0 else -nearest[True]

@@ -295,6 +295,7 @@ fn field_input<'a>(
         },
         form,
         tray: None,
+        wedge: None,
         couch: None,
         reference: reference(arguments, model)?,
         typed,

@@ -21,7 +21,7 @@ use super::technique::{
     wedged_shape_obstacle, wedges_stay_out,
 };
 use super::wedge::wedge_of;
-use super::wedge_factor::{reversal_remark, wedge_limit};
+use super::wedge_factor::reversal_remark;
 use super::{
     BeamCalculation, DepthBasis, FactorError, FieldDepth, FieldInput, FieldModel, Form, Method,
     Obstacle, ObstacleKind, Squares, StepLimits, Technique, Trace, dose_per_mu,
@@ -386,7 +386,6 @@ fn calculate(
         Some(model.beam.d_max_cm),
         site.technical.edge_margin_cm,
     ));
-    result.obstacles.extend(wedge_limit(&field, model.beam));
     result.remarks.extend(reversal_remark(&field));
     match dose_per_mu(&field) {
         Ok(trace) => {

@@ -547,3 +547,21 @@ fn verify_far_along_a_steep_wedge_is_outside_the_method() {
     );
     assert!(result.obstacles[0].message.contains("fluence profile"));
 }
+
+/// A depth-dose table, once by its own form and once by way of TPR: the wedge is the same in both.
+#[test]
+fn property_both_forms_have_the_same_wedge() {
+    let mut machine = tg71("tg71-pdd");
+    machine.beams[0].wedges = self::machine().beams[0].wedges.clone();
+    let mut plan = wedged(f45(0.0), [2.0, 3.0]);
+    let isocentric = calculate_with(&plan, &machine).trace.unwrap();
+    assert!(isocentric.factor(FactorName::TissuePhantomRatio).is_some());
+    plan.patient_setups[0].technique = Given::stated("FIXED_SSD".to_owned());
+    let fixed = calculate_with(&plan, &machine).trace.unwrap();
+    assert!(fixed.factor(FactorName::PercentDepthDose).is_some());
+    for name in [FactorName::Wedge, FactorName::WedgeProfile] {
+        let of = |trace: &counterfoil::dose::Trace| trace.factor(name).unwrap().value;
+        assert_close(of(&fixed), of(&isocentric), 1e-12);
+    }
+    assert_close(fixed.dose_per_mu_cgy, isocentric.dose_per_mu_cgy, 1e-9);
+}

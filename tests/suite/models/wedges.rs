@@ -6,6 +6,7 @@ use counterfoil::beam_model::{
 };
 use counterfoil::quantity::PointSquare;
 use jiff::civil::date;
+use proptest::prelude::*;
 
 use super::{copy_folder, edit, shipped_folder, shipped_machines};
 
@@ -373,4 +374,40 @@ fn verify_exchanged_and_turned_tables_are_pointed_at() {
             .iter()
             .any(|finding| finding.severity == ModelSeverity::Error)
     );
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 100, failure_persistence: None, ..ProptestConfig::default() })]
+
+    /// Refused or read, never a panic; and what is read can be checked and looked up.
+    #[test]
+    fn property_damaged_wedge_tables_never_panic(
+        file in 0_usize..3,
+        edits in prop::collection::vec((any::<prop::sample::Index>(), "[-0-9.,;#\"\n]{0,4}", 0_usize..4), 1..4),
+    ) {
+        let file = ["6/wedge-W60.csv", "6/wedge-W60-profile.csv", "6/wedge-D60-segments.csv"][file];
+        let copy = copy_of_rowan();
+        let path = copy.path().join(file);
+        let mut text: Vec<u8> = std::fs::read(&path).unwrap();
+        for (at, insert, remove) in edits {
+            let at = at.index(text.len());
+            let end = (at + remove).min(text.len());
+            text.splice(at..end, insert.bytes());
+        }
+        std::fs::write(&path, text).unwrap();
+        match load_machine(copy.path()) {
+            Err(error) => prop_assert!(error.to_string().contains(file), "{error}"),
+            Ok(mut machine) => {
+                machine.beams.truncate(1);
+                let _ = check_machine(&machine, date(2026, 12, 1));
+                for wedge in &machine.beams[0].wedges {
+                    for value in [-1e9, -1.0, 0.0, 9.99, 40.0, f64::NAN, f64::INFINITY] {
+                        let _ = wedge.tables().map(|tables| tables.profile(value));
+                        let _ = wedge.tables().map(|tables| tables.factor(value, PointSquare::new(value)));
+                        let _ = wedge.sweep().map(|sweep| sweep.delivered_share(value));
+                    }
+                }
+            }
+        }
+    }
 }

@@ -52,6 +52,32 @@ BEAMS = {
 }
 
 
+# Wedges, all invented, near common values of the trade.
+#   angle        nominal, degrees
+#   factor       on the axis at 10 cm depth for 10 x 10
+#   harder       growth of its logarithm per cm of depth (the wedge hardens the beam)
+#   wider        growth of its logarithm per cm of side (scatter from the wedge)
+#   reach        half width of the profile, cm; None for a dynamic wedge, which has a sweep instead
+WEDGES = {
+    "rowan/6": {"W15": dict(angle=15, factor=0.776, harder=0.0008, wider=0.0003, reach=15),
+                "W30": dict(angle=30, factor=0.624, harder=0.0012, wider=0.0006, reach=15),
+                "W45": dict(angle=45, factor=0.497, harder=0.0020, wider=0.0010, reach=12),
+                "W60": dict(angle=60, factor=0.402, harder=0.0025, wider=0.0014, reach=10),
+                "M60": dict(angle=60, factor=0.268, harder=0.0024, wider=0.0022, reach=15),
+                "D60": dict(angle=60, reach=None)},
+    "rowan/18": {"W15": dict(angle=15, factor=0.828, harder=0.0002, wider=0.0003, reach=15),
+                 "W30": dict(angle=30, factor=0.701, harder=0.0003, wider=0.0006, reach=15),
+                 "W45": dict(angle=45, factor=0.583, harder=0.0004, wider=0.0009, reach=12),
+                 "W60": dict(angle=60, factor=0.481, harder=0.0005, wider=0.0013, reach=10),
+                 "M60": dict(angle=60, factor=0.334, harder=0.0004, wider=0.0020, reach=15),
+                 "D60": dict(angle=60, reach=None)},
+}
+WEDGE_SIDES = [4, 6, 8, 10, 12, 15, 20, 25]
+WEDGE_DEPTHS = {"rowan/6": [1.5, 3, 5, 7.5, 10, 12.5, 15, 20, 25, 30, 35],
+                "rowan/18": [3, 5, 7.5, 10, 12.5, 15, 20, 25, 30, 35]}
+SWEEP = (-20.0, 9.5, 0.5)  # from, to, step of the moving jaw, positive towards the thin end
+
+
 def read_kernel():
     with open(HERE / "kernel.csv", encoding="ascii", newline="") as file:
         rows = [row for row in csv.reader(file) if not row[0].startswith("#")]
@@ -194,6 +220,27 @@ def off_axis_in_water(beam, radius, depth):
     return fluence_dose(beam, radius, depth) / fluence_dose(beam, 0.0, depth)
 
 
+def wedge_gradient(beam, angle):
+    """Gradient of the logarithm of fluence along a wedge, per cm: attenuation with depth times tan(angle).
+
+    A wedge of this angle tilts the isodoses by it where fluence across and dose with depth fall alike. The fall with
+    depth is that of a 10 x 10 field about 10 cm deep, inverse square with the surface 90 cm from the source.
+    """
+    def along_depth(depth):
+        return math.log(dose(beam, depth, 10 * (90 + depth) / 100) / (90 + depth) ** 2)
+
+    return (along_depth(9) - along_depth(11)) / 2 * math.tan(math.radians(angle))
+
+
+def wedge_factor(wedge, depth, side):
+    return wedge["factor"] * math.exp(wedge["harder"] * (depth - 10) + wedge["wider"] * (side - 10))
+
+
+def wedge_ratio(gradient, position):
+    """Profile: exponential, a little less steep towards the thin end (less hardening there)."""
+    return math.exp(gradient * position * (1 - 0.004 * position))
+
+
 def write(path, comments, header, rows):
     path.parent.mkdir(parents=True, exist_ok=True)
     lines = [f"# {comment}" for comment in comments]
@@ -235,10 +282,34 @@ def write_beam(folder, name, beam):
           [[r, *(f"{ratio(beam, r, d):.4f}" for d in across)] for r in OFF_AXIS_RADII])
 
 
+def write_wedges(folder, name, beam):
+    for wedge_id, wedge in WEDGES.get(name, {}).items():
+        gradient = wedge_gradient(beam, wedge["angle"])
+        path = folder / name / f"wedge-{wedge_id}"
+        if wedge["reach"] is None:
+            start, stop, step = SWEEP
+            places = [start + step * index for index in range(round((stop - start) / step) + 1)]
+            write(path.with_name(path.name + "-segments.csv"),
+                  [INVENTED, "Sweep of one jaw: share of the meterset delivered when it passes position_cm (isocentre plane, positive"
+                   " towards the thin end); the first share comes with the jaw at rest."],
+                  ["position_cm", "cumulative_meterset"],
+                  [[f"{place:g}", f"{math.exp(gradient * (place - stop)):.5f}"] for place in places])
+            continue
+        write(path.with_name(path.name + ".csv"),
+              [INVENTED, "Wedge factor on the axis; depth_cm down, side of the square at the point in cm across."],
+              ["depth_cm", *WEDGE_SIDES],
+              [[d, *(f"{wedge_factor(wedge, d, s):.4f}" for s in WEDGE_SIDES)] for d in WEDGE_DEPTHS[name]])
+        write(path.with_name(path.name + "-profile.csv"),
+              [INVENTED, "Fluence along the wedge at the isocentre plane, 1 on the axis; positions towards the thin end are positive."],
+              ["position_cm", "ratio"],
+              [[x, f"{wedge_ratio(gradient, x):.4f}"] for x in range(-wedge["reach"], wedge["reach"] + 1)])
+
+
 def main():
     folder = Path(sys.argv[1]) if len(sys.argv) > 1 else HERE
     for name, beam in BEAMS.items():
         write_beam(folder, name, beam)
+        write_wedges(folder, name, beam)
 
 
 if __name__ == "__main__":

@@ -6,7 +6,7 @@ use std::sync::Arc;
 use serde::Serialize;
 
 use super::scatter::{NoKernel, ScatterAtDepth, ScatterKernel, ScatterRow};
-use super::{Grid, HeadScatter, Lookup, OutOfRange, ProofPoint};
+use super::{Grid, HeadScatter, Lookup, OutOfRange, ProofPoint, WedgeModel};
 use crate::plan::{BeamEnergy, RadiationType};
 use crate::quantity::{
     CollimatorSquare, PointSquare, ReferenceDepthSquare, SurfaceSquare, tolerance,
@@ -43,6 +43,8 @@ pub struct BeamModel {
     pub extra_focal_distance_cm: Option<f64>,
     /// Tray transmission by tray ID.
     pub trays: Vec<(String, f64)>,
+    /// Wedges.
+    pub wedges: Vec<WedgeModel>,
     /// Couch transmission by gantry angle.
     pub couch: Vec<CouchArc>,
     /// Uncertainties, 1 sigma.
@@ -284,6 +286,15 @@ impl BeamModel {
             .iter()
             .find(|(id, _)| id == tray_id.trim())
             .map(|&(_, transmission)| transmission)
+    }
+
+    /// The wedge that a plan names by this ID.
+    #[must_use]
+    pub fn wedge(&self, wedge_id: &str) -> Option<&WedgeModel> {
+        let wanted = wedge_id.trim();
+        self.wedges
+            .iter()
+            .find(|wedge| wedge.ids().any(|id| id == wanted))
     }
 
     /// The couch arc that a gantry angle (0 <= a < 360) falls in.

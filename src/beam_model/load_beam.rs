@@ -4,6 +4,7 @@
 use std::sync::Arc;
 
 use super::load_tables::{load_depth_table, load_off_axis, load_output_factors};
+use super::load_wedge::load_wedges;
 use super::machine_file::{BeamEntry, CouchEntry, DepthKindEntry, NormalisedAt, RadiationEntry};
 use super::model_folder::ModelFolder;
 use super::scatter::ScatterKernel;
@@ -17,7 +18,7 @@ use crate::quantity::tolerance;
 /// Joins a beam's entry with its tables.
 pub(super) fn load_beam(
     files: &mut ModelFolder,
-    entry: BeamEntry,
+    mut entry: BeamEntry,
 ) -> Result<BeamModel, ModelError> {
     let path = files.machine_path();
     let key = |name: &str| format!("beams {}, {name}", entry.label);
@@ -75,6 +76,7 @@ pub(super) fn load_beam(
         }
         trays.push((tray.id.clone(), tray.transmission));
     }
+    let wedges = load_wedges(files, &entry.label, std::mem::take(&mut entry.wedges))?;
     let couch = entry.couch.iter().map(couch_arc).collect::<Vec<_>>();
     if let Some((one, other)) = first_overlap(&couch) {
         return Err(ModelError::setting(
@@ -121,6 +123,7 @@ pub(super) fn load_beam(
         penumbra,
         extra_focal_distance_cm: entry.extra_focal_distance_cm,
         trays,
+        wedges,
         couch,
         uncertainty,
         proof: proof.collect(),

@@ -8,9 +8,9 @@ use super::machine_value::{
     date, device_distance, device_travel, exchange_k, extra_focal, gantry, jaw_transmission,
     leaf_end_offset, open_transmission, opening, penumbra, penumbra_share, photon_energy,
     positive_depth, proof_dose, reference_output, source_axis_distance, source_surface_distance,
-    spread, surface_distance, text, texts, transmission,
+    spread, surface_distance, text, texts, transmission, wedge_angle, wedge_gap,
 };
-use super::{DataOrigin, DepthInterpolation, JawAxis, OffAxisKind};
+use super::{DataOrigin, DepthInterpolation, JawAxis, OffAxisKind, WedgeModelKind};
 
 /// The schema that this program reads.
 pub(super) const SCHEMA: i64 = 1;
@@ -149,6 +149,8 @@ pub(super) struct BeamEntry {
     #[serde(default)]
     pub(super) trays: Vec<TrayEntry>,
     #[serde(default)]
+    pub(super) wedges: Vec<WedgeEntry>,
+    #[serde(default)]
     pub(super) couch: Vec<CouchEntry>,
     pub(super) uncertainty: UncertaintyEntry,
     #[serde(default)]
@@ -222,6 +224,24 @@ pub(super) struct TrayEntry {
     pub(super) id: String,
     #[serde(deserialize_with = "open_transmission")]
     pub(super) transmission: f64,
+}
+
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(super) struct WedgeEntry {
+    #[serde(deserialize_with = "text")]
+    pub(super) id: String,
+    #[serde(default, deserialize_with = "texts")]
+    pub(super) further_ids: Vec<String>,
+    pub(super) kind: WedgeModelKind,
+    #[serde(deserialize_with = "wedge_angle")]
+    pub(super) angle_deg: f64,
+    pub(super) factor_file: Option<String>,
+    pub(super) profile_file: Option<String>,
+    pub(super) segments_file: Option<String>,
+    pub(super) moves_along: Option<AxisEntry>,
+    #[serde(default, deserialize_with = "wedge_gap")]
+    pub(super) closing_gap_cm: Option<f64>,
 }
 
 #[derive(Deserialize)]

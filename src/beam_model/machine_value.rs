@@ -123,6 +123,7 @@ optional! {
     penumbra: penumbra_sigma;
     penumbra_share: penumbra_tail;
     extra_focal: extra_focal_distance;
+    wedge_gap: closing_gap;
 }
 
 bounded! {
@@ -141,6 +142,10 @@ bounded! {
     /// Flattening filters and their like sit between target and monitor chamber (common practice).
     extra_focal_distance: 2.0, 25.0, "cm";
     gantry: 0.0, 360.0, "degrees";
+    /// Wedges of 15 to 60 degrees are in use (common practice).
+    wedge_angle: 1.0, 75.0, "degrees";
+    /// Opposed jaws stop a few millimetres before they meet (common practice).
+    closing_gap: 0.0, 2.0, "cm";
     /// Above 10 per cent no beam could be verified with it.
     spread: 0.0, 10.0, "per cent";
     proof_dose: 0.01, 3.0, "cGy/MU";

@@ -12,6 +12,7 @@ pub mod kernel;
 mod load_beam;
 mod load_machine;
 mod load_tables;
+mod load_wedge;
 mod machine;
 mod machine_file;
 mod machine_value;
@@ -19,6 +20,7 @@ mod model_folder;
 pub mod scatter;
 mod table;
 mod table_file;
+mod wedge;
 
 pub use beam::{
     BeamModel, BeamUncertainty, CouchArc, OffAxis, OffAxisKind, OutputTable, Penumbra,
@@ -34,3 +36,4 @@ pub use machine::{
     ProofPoint, Provenance, Travel,
 };
 pub use table::{Cell, DepthInterpolation, Grid, GridError, Lookup, OutOfRange};
+pub use wedge::{WedgeBody, WedgeModel, WedgeModelKind, WedgeSweep, WedgeTables};

@@ -234,6 +234,26 @@ pub(super) struct FieldArguments {
     /// Wedge factor
     #[arg(long, value_name = "RATIO")]
     pub(super) wedge_factor: Option<f64>,
+    /// Wedge of the beam model, by its ID: factor and profile are looked up
+    #[arg(
+        long,
+        value_name = "ID",
+        requires = "machine",
+        requires = "wedge_orientation",
+        conflicts_with = "wedge_factor"
+    )]
+    pub(super) wedge: Option<String>,
+    /// Wedge Orientation as in the plan: 0 has the thin end towards +y of the collimator, 90 towards -x
+    #[arg(
+        long,
+        value_name = "DEGREES",
+        requires = "wedge",
+        allow_negative_numbers = true
+    )]
+    pub(super) wedge_orientation: Option<f64>,
+    /// Share of the meterset that a motorised wedge is in for, above 0 and at most 1
+    #[arg(long, value_name = "SHARE", requires = "wedge")]
+    pub(super) wedge_share: Option<f64>,
     /// Tray factor
     #[arg(long, value_name = "RATIO")]
     pub(super) tray_factor: Option<f64>,

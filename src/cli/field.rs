@@ -8,10 +8,12 @@ use super::args::{FieldArguments, SidesAt};
 use super::exit::Exit;
 use super::model::{named_beam, origin};
 use super::settings::{effective, load};
-use crate::beam_model::{BeamModel, MachineModel, ModelSet, ReferenceOutput, TableKind};
+use crate::beam_model::{
+    BeamModel, MachineModel, ModelSet, ReferenceOutput, TableKind, WedgeModel, WedgeModelKind,
+};
 use crate::dose::{
-    FactorName, FieldDepth, FieldInput, FieldModel, Form, Mayneord, RayPoint, Typed, dose_per_mu,
-    mayneord, outside_method,
+    FactorName, FieldDepth, FieldInput, FieldModel, FieldWedge, Form, Mayneord, PlacedWedge,
+    RayPoint, Typed, dose_per_mu, mayneord, outside_method,
 };
 use crate::quantity::Quantity;
 use crate::report::trace_text;
@@ -295,10 +297,50 @@ fn field_input<'a>(
         },
         form,
         tray: None,
+        wedge: wedge(arguments, model)?,
         couch: None,
         reference: reference(arguments, model)?,
         typed,
     })
+}
+
+/// The model's wedge of the typed ID, as it lies.
+fn wedge<'a>(
+    arguments: &FieldArguments,
+    model: Option<(&'a MachineModel, &'a BeamModel)>,
+) -> anyhow::Result<Option<FieldWedge<'a>>> {
+    let (Some(id), Some(orientation_deg)) = (&arguments.wedge, arguments.wedge_orientation) else {
+        return Ok(None);
+    };
+    let (_, beam) = model.context("--wedge needs a model (--machine, --energy)")?;
+    let known = beam.wedge(id).with_context(|| {
+        let ids: Vec<&str> = beam.wedges.iter().flat_map(WedgeModel::ids).collect();
+        format!(
+            "the beam model has no wedge {id} for {}; it has {}",
+            beam.label,
+            if ids.is_empty() {
+                "none".to_owned()
+            } else {
+                ids.join(", ")
+            }
+        )
+    })?;
+    if let Some(objection) = Quantity::Angle.objection(orientation_deg) {
+        bail!("--wedge-orientation: {objection}");
+    }
+    let share_in = arguments.wedge_share.unwrap_or(1.0);
+    if !(share_in > 0.0 && share_in <= 1.0) {
+        bail!("--wedge-share: {share_in} is no share above 0 and at most 1");
+    }
+    if share_in < 1.0 && known.kind() != WedgeModelKind::Motorised {
+        bail!("--wedge-share: {id} is a {} wedge", known.kind().term());
+    }
+    let placed = PlacedWedge::new(known, orientation_deg).with_context(|| {
+        format!(
+            "{id} is a dynamic wedge: its factor depends on how the jaw moves; type --wedge-factor"
+        )
+    })?;
+    Ok(Some(FieldWedge { placed, share_in }))
 }
 
 /// D'0 with its place: typed, the model's, or a mixture of both.

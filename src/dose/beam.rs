@@ -17,8 +17,11 @@ use super::prerequisite::{
 use super::shaped::{DepthTrack, ShapedField, calculate_shaped, track_depths};
 use super::spread::expected_spread;
 use super::technique::{
-    classify_delivered, shaped_wedge_obstacle, technique_obstacles, tilt_obstacles, wedges_stay_out,
+    classify_delivered, shaped_wedge_obstacle, technique_obstacles, tilt_obstacles,
+    wedged_shape_obstacle, wedges_stay_out,
 };
+use super::wedge::wedge_of;
+use super::wedge_factor::reversal_remark;
 use super::{
     BeamCalculation, DepthBasis, FactorError, FieldDepth, FieldInput, FieldModel, Form, Method,
     Obstacle, ObstacleKind, Squares, StepLimits, Technique, Trace, dose_per_mu,
@@ -101,7 +104,14 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         &placement,
         &mut result,
     );
-    let mut devices = devices_of(beam, at, technique, model, &depths, &mut result);
+    let mut devices = devices_of(
+        (beam, &delivered),
+        at,
+        technique,
+        model,
+        &depths,
+        &mut result,
+    );
     let rectangle = matches!(technique, Technique::Static | Technique::Wedge);
     if let (true, Some(model), Some([x_cm, y_cm])) = (rectangle, model, openings(at)) {
         result.squares = Some(Squares {
@@ -118,7 +128,9 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         && devices.uncovered.is_empty()
         && let Some(model) = model
     {
-        if technique == Technique::Static {
+        // A wedge that could not be placed must not pass for an open field.
+        let wedged = technique == Technique::Wedge && devices.wedge.is_some();
+        if technique == Technique::Static || wedged {
             calculate(
                 request,
                 at,
@@ -278,18 +290,26 @@ fn depths_of(
     (found, track)
 }
 
-fn devices_of(
-    beam: &Beam,
+fn devices_of<'a>(
+    (beam, delivered): (&Beam, &[Interval<'_>]),
     at: &ControlPoint,
     technique: Technique,
-    model: Option<FieldModel<'_>>,
+    model: Option<FieldModel<'a>>,
     depths: &DepthFindings,
     result: &mut BeamCalculation,
-) -> Modifiers {
+) -> Modifiers<'a> {
     if technique == Technique::Electron {
         return Modifiers::default();
     }
     let mut devices = hardware(beam, model.map(|model| model.beam));
+    if technique == Technique::Wedge {
+        let found = wedge_of(beam, delivered, model.map(|model| model.beam));
+        devices.wedge = found.wedge;
+        devices.uncovered.extend(found.obstacles);
+        devices.remarks.extend(found.remarks);
+        let shaped = wedged_shape_obstacle(beam, delivered);
+        devices.uncovered.extend(shaped);
+    }
     if let (Some(model), Some(gantry_deg)) = (model, at.gantry_deg.get())
         && !is_shaped(technique)
     {
@@ -317,7 +337,7 @@ fn calculate(
     model: FieldModel<'_>,
     placement: &Placement,
     depths: &DepthFindings,
-    devices: &Modifiers,
+    devices: &Modifiers<'_>,
     result: &mut BeamCalculation,
 ) {
     let (Some(jaws_x_cm), Some(jaws_y_cm)) = (at.jaws_x_cm.get(), at.jaws_y_cm.get()) else {
@@ -355,6 +375,7 @@ fn calculate(
         },
         form: ssd_form.map_or(Form::Isocentric, |ssd_cm| Form::FixedSsd { ssd_cm }),
         tray: devices.tray.clone(),
+        wedge: devices.wedge,
         couch: devices.couch,
         reference: None,
         typed: Vec::new(),
@@ -365,6 +386,7 @@ fn calculate(
         Some(model.beam.d_max_cm),
         site.technical.edge_margin_cm,
     ));
+    result.remarks.extend(reversal_remark(&field));
     match dose_per_mu(&field) {
         Ok(trace) => {
             let (sigma_cm, name) = depth_sigma(depth.basis, site);
@@ -415,7 +437,7 @@ fn calculate_by_integration(
     (beam, delivered): (&Beam, &[Interval<'_>]),
     model: FieldModel<'_>,
     (placement, depths, track): (&Placement, &DepthFindings, Option<&DepthTrack>),
-    devices: &Modifiers,
+    devices: &Modifiers<'_>,
     result: &mut BeamCalculation,
 ) {
     let ModelAnswer::Found(machine) = request.model else {

@@ -19,9 +19,10 @@
 //! water phantom the obliquity is in them already and both depths are perpendicular
 //! to the surface. On the axis (radius below the position tolerance) the off-axis
 //! ratio is 1 by definition. What is outside the method's range though it can be
-//! multiplied is told by `limits`; which form a plan calls for by `beam`.
+//! multiplied is told by `limits`; what a wedge does by `wedge_factor`; which form a plan calls for by `beam`.
 
 use super::text::number;
+use super::wedge_factor::wedge_factors;
 use super::{Factor, FactorError, FactorName, FieldInput, Form, Input, Trace};
 use crate::beam_model::{BeamModel, JawAxis, Lookup, OffAxisKind, OutOfRange, TableKind};
 use crate::quantity::{PointSquare, tolerance};
@@ -78,7 +79,7 @@ pub fn dose_per_mu(field: &FieldInput<'_>) -> Result<Trace, FactorError> {
         }
     }
     factors.push(off_axis_factor(field)?);
-    factors.extend(field.typed(FactorName::Wedge));
+    factors.extend(wedge_factors(field)?);
     factors.extend(tray_factor(field));
     factors.extend(couch_factor(field));
     factors.extend(field.typed(FactorName::OtherTransmission));

@@ -5,7 +5,7 @@
 use thiserror::Error;
 
 use super::aperture::{collimator_square, point_square};
-use super::{Factor, FactorName, RayPoint};
+use super::{Factor, FactorName, FieldWedge, RayPoint};
 use crate::beam_model::{BeamModel, CouchArc, JawAxis, OffAxisKind, OutOfRange, ReferenceOutput};
 use crate::quantity::{CollimatorSquare, PointSquare, tolerance};
 
@@ -87,11 +87,13 @@ pub struct FieldInput<'a> {
     pub form: Form,
     /// Tray in the beam.
     pub tray: Option<Tray>,
+    /// Wedge in the beam.
+    pub wedge: Option<FieldWedge<'a>>,
     /// Couch in the beam.
     pub couch: Option<CouchArc>,
     /// D'0, d0 and `S_ref` typed instead of the model's.
     pub reference: Option<ReferenceOutput>,
-    /// Factors typed instead of the model's, and wedge or further transmission, which only come typed.
+    /// Factors typed instead of the model's, and further transmission, which only comes typed.
     pub typed: Vec<(FactorName, Typed)>,
 }
 

@@ -2,6 +2,7 @@
 //! the build-up, a point under a jaw or too near a field edge. The range of the
 //! tables is their own matter.
 
+use super::wedge_factor::wedge_limit;
 use super::{FieldInput, Obstacle, ObstacleKind};
 use crate::quantity::tolerance;
 
@@ -59,5 +60,7 @@ pub fn outside_method(
             );
         }
     }
+    let beam = field.model.map(|model| model.beam);
+    reasons.extend(beam.and_then(|beam| wedge_limit(field, beam)));
     reasons
 }

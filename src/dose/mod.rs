@@ -27,6 +27,8 @@ mod spread;
 mod technique;
 mod text;
 mod trace;
+mod wedge;
+mod wedge_factor;
 
 pub use aperture::{collimator_square, point_square};
 pub use beam::{BeamRequest, ModelAnswer, calculate_beam};
@@ -46,3 +48,4 @@ pub use shaped::{ControlPointDose, FluenceImage, ShapedResult, Shares, StepLimit
 pub use spread::expected_spread;
 pub use technique::classify;
 pub use trace::{Factor, FactorName, Input, Trace};
+pub use wedge::{FieldWedge, PlacedWedge};

@@ -4,16 +4,18 @@
 
 use super::delivery::turn_between_deg;
 use super::depth_question::DepthFindings;
-use super::{DepthBasis, Obstacle, ObstacleKind, Tray};
+use super::{DepthBasis, FieldWedge, Obstacle, ObstacleKind, Tray};
 use crate::beam_model::{BeamModel, CouchArc};
 use crate::plan::Beam;
 use crate::quantity::{Given, tolerance};
 
 /// What the devices in the beam come to.
-#[derive(Clone, Debug, Default, PartialEq)]
-pub(super) struct Modifiers {
+#[derive(Clone, Debug, Default)]
+pub(super) struct Modifiers<'a> {
     /// A tray that the model knows.
     pub(super) tray: Option<Tray>,
+    /// A wedge that the model knows; filled in by the caller, who knows where meterset accrues.
+    pub(super) wedge: Option<FieldWedge<'a>>,
     /// The couch, where the model has it in the beam.
     pub(super) couch: Option<CouchArc>,
     /// Hardware that no table covers: with one of these no number is calculated.
@@ -35,7 +37,7 @@ fn uncovered(message: String) -> Obstacle {
 }
 
 /// Trays, accessories, applicators, compensators.
-pub(super) fn hardware(beam: &Beam, model: Option<&BeamModel>) -> Modifiers {
+pub(super) fn hardware<'a>(beam: &Beam, model: Option<&BeamModel>) -> Modifiers<'a> {
     let mut found = Modifiers::default();
     for compensator in &beam.compensators {
         found.uncovered.push(uncovered(format!(
@@ -80,7 +82,7 @@ pub(super) fn hardware(beam: &Beam, model: Option<&BeamModel>) -> Modifiers {
     found
 }
 
-fn place_trays(trays: &[&Given<String>], model: Option<&BeamModel>, found: &mut Modifiers) {
+fn place_trays(trays: &[&Given<String>], model: Option<&BeamModel>, found: &mut Modifiers<'_>) {
     let Some((first, others)) = trays.split_first() else {
         return;
     };
@@ -115,7 +117,7 @@ pub(super) fn couch(
     gantry_deg: f64,
     couch_deg: f64,
     depths: &DepthFindings,
-    found: &mut Modifiers,
+    found: &mut Modifiers<'_>,
 ) {
     let gantry_deg = gantry_deg.rem_euclid(360.0);
     let Some(arc) = beam.couch_arc(gantry_deg) else {

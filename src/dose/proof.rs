@@ -35,6 +35,7 @@ pub fn prove(
         },
         form,
         tray: None,
+        wedge: None,
         couch: None,
         reference: None,
         typed: Vec::new(),

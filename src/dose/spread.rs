@@ -3,6 +3,7 @@
 //! How a deviation is judged against it is the work of `audit`.
 
 use super::factors::dose_per_mu;
+use super::wedge_factor::wedge_terms;
 use super::{FieldInput, Form, Spread, SpreadTerm};
 use crate::beam_model::{BeamModel, OutOfRange};
 use crate::quantity::{PointSquare, sterling_side_cm, tolerance};
@@ -46,6 +47,7 @@ pub fn expected_spread(
     if field.couch.is_some() {
         terms.push(stated("couch", uncertainty.transmission_percent));
     }
+    terms.extend(wedge_terms(field, beam));
     terms.extend(depth_term(field, depth_sigma_cm, depth_name));
     terms.extend(elongation_term(field, beam));
     terms.extend(off_centre_term(field, beam));

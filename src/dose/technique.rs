@@ -57,6 +57,22 @@ pub(super) fn classify_delivered(beam: &Beam, intervals: &[Interval<'_>]) -> Tec
     }
 }
 
+/// What shapes a wedged field besides its jaws.
+pub(super) fn wedged_shape_obstacle(beam: &Beam, intervals: &[Interval<'_>]) -> Option<Obstacle> {
+    let at = intervals.first().map(|interval| interval.start);
+    let what = match at.map(|point| leaves_at(beam, point)) {
+        Some(Leaves::Cut) => "leaves shape the wedged field",
+        Some(Leaves::Unknown) => {
+            "leaves may shape the wedged field (their positions or boundaries are not given)"
+        }
+        Some(Leaves::Outside) | None if beam.blocks.is_empty() => return None,
+        Some(Leaves::Outside) | None => "blocks shape the wedged field",
+    };
+    Some(obstacle(format!(
+        "{what}, which this version does not calculate: verify the beam by other means"
+    )))
+}
+
 /// A wedge that is, or may be, in a field that leaves, blocks or motion shape.
 pub(super) fn shaped_wedge_obstacle(beam: &Beam, intervals: &[Interval<'_>]) -> Option<Obstacle> {
     wedge_in(beam, intervals).then(|| {
@@ -180,9 +196,9 @@ fn uncovered_reason(
         | Technique::Arc
         | Technique::Dynamic
         | Technique::Segmented
+        | Technique::Wedge
         | Technique::Blocked => None,
         Technique::Electron => Some("the beam is an electron beam"),
-        Technique::Wedge => Some("a wedge is in the beam, or its position is not stated"),
         Technique::Mlc => {
             let at = intervals.first().map(|interval| interval.start);
             match at

@@ -28,6 +28,8 @@ pub enum FactorName {
     OffAxisRatio,
     /// WF.
     Wedge,
+    /// Profile of a wedge, off the axis along it.
+    WedgeProfile,
     /// TF.
     Tray,
     /// Transmission of couch or immobilisation.
@@ -53,6 +55,7 @@ impl FactorName {
             Self::EffectiveDepth => "effective-depth correction",
             Self::OffAxisRatio => "off-axis ratio",
             Self::Wedge => "wedge factor",
+            Self::WedgeProfile => "wedge profile ratio",
             Self::Tray => "tray factor",
             Self::Couch => "couch transmission",
             Self::OtherTransmission => "further transmission",
@@ -74,6 +77,7 @@ impl FactorName {
             Self::EffectiveDepth => "TPR(d_eff)/TPR(d)",
             Self::OffAxisRatio => "OAR",
             Self::Wedge => "WF",
+            Self::WedgeProfile => "WF(x)/WF(0)",
             Self::Tray => "TF",
             Self::Couch => "CF",
             Self::OtherTransmission => "BF",

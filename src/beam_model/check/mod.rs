@@ -10,6 +10,7 @@ mod outlier;
 mod output;
 mod quality;
 mod shaped;
+mod wedge;
 mod whole;
 
 pub use quality::tpr20_10_from_pdd20_10;
@@ -153,6 +154,7 @@ pub fn check_machine(machine: &MachineModel, today: jiff::civil::Date) -> Vec<Mo
             output::check(beam),
             off_axis::check(beam),
             shaped::check(machine, beam),
+            wedge::check(machine, beam),
         ];
         findings.extend(of_beam.into_iter().flatten().map(|mut finding| {
             finding.beam = Some(beam.label.clone());

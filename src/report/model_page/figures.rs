@@ -2,6 +2,7 @@
 //! drawn is for `curves`.
 
 use super::curves::{Axis, Curve, Plot, draw};
+use super::wedges;
 use crate::beam_model::{BeamModel, Grid, OffAxisKind, TableKind};
 use crate::report::number::short;
 
@@ -17,7 +18,7 @@ const CURVES: usize = 6;
 /// Points of a curve between its ends.
 const STEPS: u32 = 160;
 
-/// Depth table, output factors and off-axis ratios of a beam; `number` makes the drawings' ids unique.
+/// Depth table, output factors, off-axis ratios and wedges of a beam; `number` makes the drawings' ids unique.
 pub(super) fn of_beam(beam: &BeamModel, number: usize) -> Vec<Figure> {
     let table = &beam.depth_table;
     let (what, unit) = match beam.table_kind {
@@ -58,6 +59,7 @@ pub(super) fn of_beam(beam: &BeamModel, number: usize) -> Vec<Figure> {
     ];
     plots
         .into_iter()
+        .chain(wedges::plots(beam))
         .enumerate()
         .map(|(index, (caption, plot))| Figure {
             svg: draw(&plot, &format!("beam-{number}-{index}"), &caption),
@@ -93,7 +95,7 @@ fn table_plot(grid: &Grid, [x, y]: [&str; 2]) -> Plot {
 }
 
 /// One column, as the program interpolates it, with its own values as dots.
-fn curve(grid: &Grid, column: usize, label: String) -> Curve {
+pub(super) fn curve(grid: &Grid, column: usize, label: String) -> Curve {
     let rows = grid.rows();
     let at = grid.columns().get(column).copied().unwrap_or(0.0);
     let (first, last) = (

@@ -6,6 +6,7 @@ mod curves;
 mod figures;
 mod head_scatter;
 mod scatter;
+mod wedges;
 
 use askama::Template;
 
@@ -168,6 +169,7 @@ fn beam_facts(beam: &BeamModel) -> Vec<(String, String)> {
         fact("d_max", format!("{} cm", short(beam.d_max_cm, 2))),
         fact("Collimator exchange k", short(beam.exchange_k, 3)),
         fact("Trays", listed(trays.collect())),
+        fact("Wedges", listed(wedges::listed(beam))),
         fact("Couch", listed(couch.collect())),
         fact(
             "Uncertainty, 1 standard deviation",

@@ -253,3 +253,67 @@ fn verify_positions_that_begin_with_a_minus_sign_are_values() {
         assert_eq!(status(&output), 2, "{words}");
     }
 }
+
+/// What is printed for a shipped model.
+fn shipped(words: &str) -> (i32, String) {
+    let output = program()
+        .current_dir(env!("CARGO_MANIFEST_DIR"))
+        .arg("field")
+        .args("--square 10 --depth 10 --machine ROWAN-1 --energy 6".split_whitespace())
+        .args(words.split_whitespace())
+        .args(["--models", "beam-models"])
+        .output()
+        .unwrap();
+    let text = format!("{}{}", stdout(&output), stderr(&output));
+    (status(&output), text)
+}
+
+/// `6/wedge-M60.csv`, 10 cm deep, side 10: 0.2680. In for 0.4: 0.4 * 0.2680 + 0.6 = 0.7072; D'0 is 0.79 and all else is 1.
+/// `6/wedge-W45-profile.csv` at 3 and -3 cm: 1.1788 and 0.8450.
+#[test]
+fn verify_wedges_of_a_model() {
+    let (code, text) = shipped("--wedge M60 --wedge-orientation 0 --wedge-share 0.4 --json");
+    assert_eq!(code, 0, "{text}");
+    let trace: serde_json::Value = serde_json::from_str(&text).unwrap();
+    near(factor(&trace, "wedge"), 0.7072, 1e-9);
+    near(
+        trace["dose_per_mu_cgy"].as_f64().unwrap(),
+        0.79 * 0.7072,
+        1e-9,
+    );
+    for (orientation, profile) in [("0", 1.1788), ("180", 0.8450)] {
+        let words = format!("--wedge W45 --wedge-orientation {orientation} --point 0,3 --json");
+        let (code, text) = shipped(&words);
+        assert_eq!(code, 0, "{text}");
+        let trace: serde_json::Value = serde_json::from_str(&text).unwrap();
+        near(factor(&trace, "wedge_profile"), profile, 1e-9);
+    }
+}
+
+#[test]
+fn verify_a_wedge_that_cannot_be_looked_up_is_refused() {
+    for (words, wanted) in [
+        (
+            "--wedge W99 --wedge-orientation 0",
+            "it has W15, W30, W45, W60, M60, D60",
+        ),
+        ("--wedge D60 --wedge-orientation 0", "dynamic"),
+        ("--wedge W45", "--wedge-orientation"),
+        (
+            "--wedge W45 --wedge-orientation 0 --wedge-share 0.5",
+            "fixed wedge",
+        ),
+        (
+            "--wedge M60 --wedge-orientation 0 --wedge-share 1.5",
+            "--wedge-share",
+        ),
+        (
+            "--wedge W45 --wedge-orientation 0 --wedge-factor 0.5",
+            "cannot be used with",
+        ),
+    ] {
+        let (code, text) = shipped(words);
+        assert_eq!(code, 2, "{words}: {text}");
+        assert!(text.contains(wanted), "{words}: {text}");
+    }
+}

@@ -8,6 +8,7 @@ mod plans;
 mod properties;
 mod shaped_model;
 mod shaped_plans;
+mod wedges;
 mod worked_examples;
 
 use std::path::PathBuf;

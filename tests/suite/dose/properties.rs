@@ -31,6 +31,7 @@ fn field<'a>(
         },
         form: Form::Isocentric,
         tray: None,
+        wedge: None,
         couch: None,
         reference: None,
         typed: Vec::new(),

@@ -32,6 +32,7 @@ fn typed_field<'a>(
         },
         form,
         tray: None,
+        wedge: None,
         couch: None,
         reference: Some(reference),
         typed: typed
@@ -127,7 +128,7 @@ fn verify_mayneord() {
     assert_close(moved.pdd_percent, 60.933, 5e-4);
 }
 
-fn tg71_field<'a>(
+pub(super) fn tg71_field<'a>(
     model: FieldModel<'a>,
     side_cm: [f64; 2],
     spd_cm: f64,

@@ -9,6 +9,7 @@ mod page;
 mod planted;
 mod shipped;
 mod tg71;
+mod wedges;
 
 use std::path::{Path, PathBuf};
 

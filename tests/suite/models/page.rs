@@ -20,11 +20,21 @@ fn verify_page_shows_every_beam_with_curves_and_is_self_contained() {
             assert!(page.contains(&format!("<h2>Beam {}</h2>", beam.label)));
         }
         // Five drawings a beam: depth table, output factors, off-axis ratios, scatter kernel, head scatter; dots are the
-        // table's own values.
+        // table's own values. Three more where there are wedges: factors, profiles, sweeps.
+        let wedges = machine.beams.iter().filter(|beam| !beam.wedges.is_empty());
         assert_eq!(
             page.matches("class=\"curves\"").count(),
-            5 * machine.beams.len()
+            5 * machine.beams.len() + 3 * wedges.count()
         );
+        for wedge in machine.beams.iter().flat_map(|beam| &beam.wedges) {
+            // Among the facts and at the end of a curve.
+            assert!(
+                page.contains(&format!("{}</text>", wedge.id)),
+                "{}",
+                wedge.id
+            );
+            assert!(page.contains(wedge.kind().term()), "{}", wedge.id);
+        }
         // Four depths carried on to zero field, each dashed; a line of the table for each.
         assert_eq!(
             page.matches("class=\"curve-dashed\"").count(),

@@ -13,6 +13,7 @@ mod not_yet;
 mod sample;
 mod shaped;
 mod shapes;
+mod wedges;
 
 use self::sample::Sample;
 
@@ -22,8 +23,10 @@ fn all() -> Vec<Sample> {
     samples.extend(geometry_shown::samples());
     samples.extend(shaped::samples());
     samples.extend(arcs::samples());
+    samples.extend(wedges::samples());
     samples.extend(faulty::samples());
     samples.extend(faulty_shaped::samples());
+    samples.extend(wedges::faulty_samples());
     samples.extend(not_yet::samples());
     samples
 }

@@ -9,7 +9,7 @@ use crate::builder::{BeamSpec, DoseReferenceSpec, Encoding, GroupSpec, Reference
 
 /// The samples of this file.
 pub(super) fn samples() -> Vec<Sample> {
-    vec![wedge(), electrons()]
+    vec![dynamic_wedge(), electrons()]
 }
 
 /// One beam, 25 fractions.
@@ -46,27 +46,25 @@ fn plan(
     }
 }
 
-fn field(name: &str) -> BeamSpec {
-    beam(1, name, "ROWAN-2", 6.0)
-        .with_field(14.0, 14.0)
-        .with_ssd(91.5)
-}
-
-fn wedge() -> Sample {
+fn dynamic_wedge() -> Sample {
     plan(
         (204, "Sumac", "WEDGE"),
-        field("Left").with_gantry(90.0).with_wedge(WedgeSpec {
-            number: 1,
-            kind: "STANDARD".to_owned(),
-            id: "W30".to_owned(),
-            angle_deg: 30,
-            factor: None,
-            orientation_deg: 270.0,
-            source_to_tray_cm: Some(58.0),
-        }),
-        (301.7, 1.5),
-        "wedge.dcm",
-        "a 30 degree wedge in the beam",
+        beam(1, "Left", "ROWAN-2", 6.0)
+            .with_field(14.0, 14.0)
+            .with_ssd(91.5)
+            .with_gantry(90.0)
+            .with_wedge(WedgeSpec {
+                number: 1,
+                kind: "DYNAMIC".to_owned(),
+                id: "D30".to_owned(),
+                angle_deg: 30,
+                factor: None,
+                orientation_deg: 0.0,
+                source_to_tray_cm: None,
+            }),
+        (201.7, 1.5),
+        "dynamic-wedge.dcm",
+        "a dynamic wedge of 30 degrees; how its jaw moves stands in the machine, not in the plan",
     )
 }
 

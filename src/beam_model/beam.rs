@@ -9,7 +9,7 @@ use super::scatter::{NoKernel, ScatterAtDepth, ScatterKernel, ScatterRow};
 use super::{Grid, HeadScatter, Lookup, OutOfRange, ProofPoint, WedgeModel};
 use crate::plan::{BeamEnergy, RadiationType};
 use crate::quantity::{
-    CollimatorSquare, PointSquare, ReferenceDepthSquare, SurfaceSquare, tolerance,
+    CollimatorSquare, PointSquare, ReferenceDepthSquare, SurfaceSquare, normal_between, tolerance,
 };
 
 /// One photon beam.
@@ -129,6 +129,17 @@ pub struct Penumbra {
     pub tail_share: f64,
     /// The tail's sigma, cm; at least `sigma_cm`.
     pub tail_sigma_cm: f64,
+}
+
+impl Penumbra {
+    /// Blurred primary fluence in the middle of a square of this side, cm, 1 without blur.
+    #[must_use]
+    pub fn on_axis_of_square(&self, side_cm: f64) -> f64 {
+        let half_cm = side_cm / 2.0;
+        let gaussian = |sigma_cm| normal_between([-half_cm, half_cm], sigma_cm).powi(2);
+        let main = gaussian(self.sigma_cm);
+        main + (gaussian(self.tail_sigma_cm) - main) * self.tail_share
+    }
 }
 
 /// 1-sigma uncertainties of a beam's data, per cent of dose.

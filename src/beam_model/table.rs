@@ -412,12 +412,12 @@ pub(super) fn monotone_slopes(places: &[f64], values: &[f64]) -> Vec<f64> {
     if count == 2 {
         return vec![secant(0); 2];
     }
-    for node in 1..count - 1 {
+    for (node, slope) in slopes.iter_mut().enumerate().take(count - 1).skip(1) {
         let (before, after) = (secant(node - 1), secant(node));
         if before * after > 0.0 {
             let weight_before = 2.0 * step(node) + step(node - 1);
             let weight_after = step(node) + 2.0 * step(node - 1);
-            slopes[node] =
+            *slope =
                 (weight_before + weight_after) / (weight_before / before + weight_after / after);
         }
     }

@@ -340,7 +340,11 @@ fn wedge<'a>(
             "{id} is a dynamic wedge: its factor depends on how the jaw moves; type --wedge-factor"
         )
     })?;
-    Ok(Some(FieldWedge { placed, share_in }))
+    Ok(Some(FieldWedge {
+        placed,
+        share_in,
+        index: 0,
+    }))
 }
 
 /// D'0 with its place: typed, the model's, or a mixture of both.

@@ -17,8 +17,8 @@ use super::prerequisite::{
 use super::shaped::{DepthTrack, ShapedField, calculate_shaped, track_depths};
 use super::spread::expected_spread;
 use super::technique::{
-    classify_delivered, shaped_wedge_obstacle, technique_obstacles, tilt_obstacles,
-    wedged_shape_obstacle, wedges_stay_out,
+    classify_delivered, jaws_are_the_wedge, technique_obstacles, tilt_obstacles, wedge_in,
+    wedged_field_is_shaped, wedges_stay_out,
 };
 use super::wedge::wedge_of;
 use super::wedge_factor::reversal_remark;
@@ -104,7 +104,7 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         &placement,
         &mut result,
     );
-    let mut devices = devices_of(
+    let devices = devices_of(
         (beam, &delivered),
         at,
         technique,
@@ -119,18 +119,15 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
             phantom: placement.ray.map(|ray| point_square(x_cm, y_cm, ray)),
         });
     }
-    if is_shaped(technique) {
-        devices
-            .uncovered
-            .extend(shaped_wedge_obstacle(beam, &delivered));
-    }
+    let integrated = is_shaped(technique)
+        || technique == Technique::Wedge && wedged_field_is_shaped(beam, &delivered);
     if beam.radiation.value() == Some(&RadiationType::Photon)
         && devices.uncovered.is_empty()
         && let Some(model) = model
     {
         // A wedge that could not be placed must not pass for an open field.
         let wedged = technique == Technique::Wedge && devices.wedge.is_some();
-        if technique == Technique::Static || wedged {
+        if technique == Technique::Static || wedged && !integrated {
             calculate(
                 request,
                 at,
@@ -140,7 +137,7 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
                 &devices,
                 &mut result,
             );
-        } else if is_shaped(technique) && technique_obstacles.is_empty() {
+        } else if integrated && technique_obstacles.is_empty() {
             calculate_by_integration(
                 request,
                 (beam, &delivered),
@@ -302,16 +299,20 @@ fn devices_of<'a>(
         return Modifiers::default();
     }
     let mut devices = hardware(beam, model.map(|model| model.beam));
-    if technique == Technique::Wedge {
+    if jaws_are_the_wedge(beam, delivered) {
+        devices.remarks.push(
+            "a dynamic wedge: the motion of its jaw, as the control points spell it out, is integrated; no wedge factor is applied"
+                .to_owned(),
+        );
+    } else if wedge_in(beam, delivered) {
         let found = wedge_of(beam, delivered, model.map(|model| model.beam));
         devices.wedge = found.wedge;
         devices.uncovered.extend(found.obstacles);
         devices.remarks.extend(found.remarks);
-        let shaped = wedged_shape_obstacle(beam, delivered);
-        devices.uncovered.extend(shaped);
     }
     if let (Some(model), Some(gantry_deg)) = (model, at.gantry_deg.get())
         && !is_shaped(technique)
+        && !(technique == Technique::Wedge && wedged_field_is_shaped(beam, delivered))
     {
         let couch_deg = at.couch_deg.get().unwrap_or_default();
         couch(model.beam, gantry_deg, couch_deg, depths, &mut devices);
@@ -460,6 +461,7 @@ fn calculate_by_integration(
             depths: track,
             depth_sigma: depth_sigma(depth.basis, request.site),
             tray: devices.tray.as_ref(),
+            wedge: devices.wedge.map(|wedge| (wedge.placed, wedge.index)),
             site: request.site,
             steps: request.steps,
         },

@@ -7,7 +7,7 @@ use super::delivery::{
     Interval, delivering_points, intervals, same_angle, same_aperture, same_point,
 };
 use super::{Obstacle, ObstacleKind, Technique};
-use crate::plan::{Beam, ControlPoint, DeviceKind, RadiationType};
+use crate::plan::{Beam, ControlPoint, DeviceKind, RadiationType, Wedge, WedgeKind};
 use crate::quantity::{Given, tolerance};
 
 /// The beam's technique. A beam whose apertures or wedge positions are not
@@ -57,28 +57,39 @@ pub(super) fn classify_delivered(beam: &Beam, intervals: &[Interval<'_>]) -> Tec
     }
 }
 
-/// What shapes a wedged field besides its jaws.
-pub(super) fn wedged_shape_obstacle(beam: &Beam, intervals: &[Interval<'_>]) -> Option<Obstacle> {
+/// Whether leaves or blocks, and not jaws alone, shape a wedged field.
+pub(super) fn wedged_field_is_shaped(beam: &Beam, intervals: &[Interval<'_>]) -> bool {
     let at = intervals.first().map(|interval| interval.start);
-    let what = match at.map(|point| leaves_at(beam, point)) {
-        Some(Leaves::Cut) => "leaves shape the wedged field",
-        Some(Leaves::Unknown) => {
-            "leaves may shape the wedged field (their positions or boundaries are not given)"
-        }
-        Some(Leaves::Outside) | None if beam.blocks.is_empty() => return None,
-        Some(Leaves::Outside) | None => "blocks shape the wedged field",
-    };
-    Some(obstacle(format!(
-        "{what}, which this version does not calculate: verify the beam by other means"
-    )))
+    let leaves = at.map(|point| leaves_at(beam, point));
+    !beam.blocks.is_empty() || !matches!(leaves, Some(Leaves::Outside) | None)
 }
 
-/// A wedge that is, or may be, in a field that leaves, blocks or motion shape.
-pub(super) fn shaped_wedge_obstacle(beam: &Beam, intervals: &[Interval<'_>]) -> Option<Obstacle> {
-    wedge_in(beam, intervals).then(|| {
-        obstacle(
-            "a wedge is in a shaped or moving field, or its position is not stated, which this version does not calculate: verify the beam by other means",
-        )
+/// Whether a dynamic wedge is in, and the control points spell out how a jaw moves for it: then the motion is the wedge.
+pub(super) fn jaws_are_the_wedge(beam: &Beam, intervals: &[Interval<'_>]) -> bool {
+    let dynamic = |wedge: &Wedge| wedge.kind.value() == Some(&WedgeKind::Dynamic);
+    if beam.wedges.is_empty() || !beam.wedges.iter().all(dynamic) {
+        return false;
+    }
+    // The jaw that moves is one across the wedge: its thin end lies towards +-y at 0 and 180 degrees, +-x at 90 and 270.
+    let along_y = beam.wedges.iter().all(|wedge| {
+        let quarter = wedge.orientation_deg.get().map(|deg| deg.rem_euclid(180.0));
+        quarter.is_some_and(|deg| !(45.0..135.0).contains(&deg))
+    });
+    intervals.iter().any(|interval| {
+        let jaws = |point: &ControlPoint| {
+            if along_y {
+                point.jaws_y_cm.get()
+            } else {
+                point.jaws_x_cm.get()
+            }
+        };
+        match (jaws(interval.start), jaws(interval.end)) {
+            (Some(start), Some(end)) => start
+                .iter()
+                .zip(&end)
+                .any(|(a, b)| (a - b).abs() > tolerance::POSITION_CM),
+            _ => false,
+        }
     })
 }
 
@@ -97,7 +108,7 @@ fn gantry_turns(interval: &Interval<'_>) -> bool {
 }
 
 /// Whether a wedge is, or may be, in the beam while meterset accrues.
-fn wedge_in(beam: &Beam, intervals: &[Interval<'_>]) -> bool {
+pub(super) fn wedge_in(beam: &Beam, intervals: &[Interval<'_>]) -> bool {
     let points = delivering_points(intervals);
     let stated_in = points
         .iter()

@@ -91,6 +91,8 @@ pub struct FieldWedge<'a> {
     pub placed: PlacedWedge<'a>,
     /// Share of the meterset that it is in for, above 0, at most 1.
     pub share_in: f64,
+    /// Item index of the wedge in the beam.
+    pub index: usize,
 }
 
 /// What the wedges of a beam come to.
@@ -190,8 +192,11 @@ pub(super) fn wedge_of<'a>(
     if let (Some(orientation_deg), Some(known), true) =
         (orientation_deg, known, found.obstacles.is_empty())
     {
-        found.wedge =
-            PlacedWedge::new(known, orientation_deg).map(|placed| FieldWedge { placed, share_in });
+        found.wedge = PlacedWedge::new(known, orientation_deg).map(|placed| FieldWedge {
+            placed,
+            share_in,
+            index: *index,
+        });
     }
     found
 }

@@ -273,6 +273,15 @@ impl DeviceKind {
         }
     }
 
+    /// Number of the layer of a stacked leaf bank, 1 or 2; 0 for a bank that is not stacked and for jaws.
+    #[must_use]
+    pub const fn leaf_layer(&self) -> u8 {
+        match self {
+            Self::Mlcx { layer } | Self::Mlcy { layer } => *layer,
+            _ => 0,
+        }
+    }
+
     /// Whether the device is a jaw pair, and which axis it limits.
     #[must_use]
     pub const fn jaw_axis(&self) -> Option<LeafAxis> {

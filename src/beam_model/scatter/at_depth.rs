@@ -152,7 +152,7 @@ impl MadeRow {
             .map(|&side_cm| square_dose(beam, depth_cm, side_cm))
             .collect::<Result<_, _>>()
             .ok()?;
-        let radial = RadialDose::from_squares(&sides_cm, &doses);
+        let radial = RadialDose::from_squares(&sides_cm, &doses, beam.penumbra);
         Some(Self {
             quadrants: Quadrants::new(&radial),
             radial,

@@ -4,6 +4,7 @@
 use std::f64::consts::{FRAC_PI_4, PI};
 
 use super::zero_field::{ZeroField, fit};
+use crate::beam_model::Penumbra;
 use crate::beam_model::table::monotone_slopes;
 
 /// Mean radius of a square of unit side, (2/pi) asinh(1) (Bjarngard & Siddon 1982): where a square's
@@ -30,17 +31,23 @@ pub struct RadialDose {
     values: Vec<f64>,
     /// Largest relative difference between the integral over a tabulated square and the table.
     pub residual: f64,
+    /// The primary of a square is blurred by it.
+    penumbra: Option<Penumbra>,
 }
 
 impl RadialDose {
     /// From squares: sides in cm, rising, at least two, and their doses.
-    pub(super) fn from_squares(sides_cm: &[f64], doses: &[f64]) -> Self {
+    pub(super) fn from_squares(
+        sides_cm: &[f64],
+        doses: &[f64],
+        penumbra: Option<Penumbra>,
+    ) -> Self {
         let radii_cm: Vec<f64> = sides_cm
             .iter()
             .map(|side_cm| MEAN_RADIUS * side_cm)
             .collect();
         let mut nodes = doses.to_vec();
-        let mut radial = Self::through(&radii_cm, &nodes, sides_cm);
+        let mut radial = Self::through(&radii_cm, &nodes, sides_cm, penumbra);
         for _ in 0..ROUNDS {
             radial.residual = 0.0;
             for ((node, &side_cm), &dose) in nodes.iter_mut().zip(sides_cm).zip(doses) {
@@ -52,7 +59,7 @@ impl RadialDose {
                 break;
             }
             let residual = radial.residual;
-            radial = Self::through(&radii_cm, &nodes, sides_cm);
+            radial = Self::through(&radii_cm, &nodes, sides_cm, penumbra);
             radial.residual = residual;
         }
         radial
@@ -61,7 +68,12 @@ impl RadialDose {
     /// The curve through (radius, K) nodes: monotone cubic in r/(r + B), in which a saturating curve is
     /// nearly straight; from zero field to the first node the bounded form; beyond the last node straight
     /// in r/(r + B), so bounded too.
-    fn through(radii_cm: &[f64], nodes: &[f64], sides_cm: &[f64]) -> Self {
+    fn through(
+        radii_cm: &[f64],
+        nodes: &[f64],
+        sides_cm: &[f64],
+        penumbra: Option<Penumbra>,
+    ) -> Self {
         let zero_field = fit(radii_cm, nodes);
         let b_cm = zero_field.half_radius_cm;
         let curved = |radius_cm: f64| radius_cm / (radius_cm + b_cm);
@@ -96,6 +108,7 @@ impl RadialDose {
             reach_cm,
             values,
             residual: 0.0,
+            penumbra,
         }
     }
 
@@ -133,7 +146,11 @@ impl RadialDose {
                 weight * self.at(side_cm / 2.0 / angle.cos())
             })
             .sum();
-        sum * half * 4.0 / PI
+        // A measured square has lost what the penumbra takes from its middle: little, but for a tail.
+        let lost = self
+            .penumbra
+            .map_or(0.0, |penumbra| 1.0 - penumbra.on_axis_of_square(side_cm));
+        sum * half * 4.0 / PI - self.at(0.0) * lost
     }
 }
 

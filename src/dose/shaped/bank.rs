@@ -46,9 +46,10 @@ pub(super) fn banks<'a>(
                 message: format!("Leaf Position Boundaries (300A,00BE) of {term} are not given"),
             });
         };
-        let earlier = found.iter().filter(|bank| bank.axis == axis).count();
+        // Layers are numbered from 1 when there are several; a single bank has none.
+        let layer = usize::from(device.kind.leaf_layer()).saturating_sub(1);
         let banks = machine.collimation.leaf_banks.iter();
-        let Some(model) = banks.filter(|bank| bank.moves_along == axis).nth(earlier) else {
+        let Some(model) = banks.filter(|bank| bank.moves_along == axis).nth(layer) else {
             return Err(unlike(format!(
                 "the plan has the leaf bank {term}, the beam model {} has none like it: no transmission is known",
                 machine.name
@@ -81,7 +82,7 @@ fn refuse_other_layout(
     let apart = boundaries_cm
         .iter()
         .zip(&model.boundaries_cm)
-        .find(|(plan, model)| !((**plan - **model).abs() <= BOUNDARY_CM));
+        .find(|(plan, model)| (**plan - **model).abs() > BOUNDARY_CM);
     if let Some((plan_cm, model_cm)) = apart {
         return Err(unlike(format!(
             "a leaf boundary of {term} is at {plan_cm:.2} cm in the plan and at {model_cm:.2} cm in the beam model {name}"

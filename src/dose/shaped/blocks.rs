@@ -124,6 +124,18 @@ mod tests {
     use super::{BlockShape, cut_blocks};
     use crate::dose::shaped::opening::{Opening, Patch};
 
+    /// Open fluence and leak at a place.
+    fn fluence_at(opening: &Opening, [x_cm, y_cm]: [f64; 2]) -> (f64, f64) {
+        let holds = |side: [f64; 2], at_cm: f64| side[0] <= at_cm && at_cm < side[1];
+        opening
+            .patches
+            .iter()
+            .filter(|patch| holds(patch.x_cm, x_cm) && holds(patch.y_cm, y_cm))
+            .fold((0.0, 0.0), |(open, leak), patch| {
+                (open + patch.open, leak + patch.leak)
+            })
+    }
+
     fn area(opening: &Opening) -> f64 {
         let patches = opening.patches.iter();
         patches
@@ -177,7 +189,7 @@ mod tests {
         };
         let mut opening = square();
         cut_blocks(&mut opening, &[block.clone(), block], 0.1);
-        let (open, leak) = opening.fluence_at([0.05, 0.05]);
+        let (open, leak) = fluence_at(&opening, [0.05, 0.05]);
         assert!(open == 0.0 && (leak - 0.01).abs() < 1e-12);
     }
 }

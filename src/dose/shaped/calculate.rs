@@ -8,6 +8,7 @@ use super::head::heights;
 use super::moments::{StepLimits, moments};
 use super::range::{OneAperture, RangeQuestion, outside_range};
 use super::results::{ShapedResult, Shares};
+use super::scatter_weight::scatter_weight;
 use super::spread::{DepthSpread, spread_of};
 use super::sum::{Standing, SumError, Sums, add_up};
 use super::trace::trace_of;
@@ -15,9 +16,10 @@ use crate::beam_model::{MachineModel, OffAxisKind};
 use crate::dose::delivery::Interval;
 use crate::dose::placement::BeamGeometry;
 use crate::dose::{
-    BeamCalculation, FieldModel, Method, Obstacle, ObstacleKind, Squares, Technique, Tray,
+    BeamCalculation, FieldModel, Method, Obstacle, ObstacleKind, PlacedWedge, Squares, Technique,
+    Tray,
 };
-use crate::plan::{Beam, BlockType};
+use crate::plan::{Beam, BlockType, LeafAxis};
 use crate::quantity::{CollimatorSquare, PointSquare, tolerance};
 use crate::settings::Site;
 
@@ -32,6 +34,8 @@ pub(in crate::dose) struct ShapedField<'a> {
     /// 1-sigma uncertainty of the depth, cm, and its basis in words.
     pub(in crate::dose) depth_sigma: (f64, &'a str),
     pub(in crate::dose) tray: Option<&'a Tray>,
+    /// The wedge, with its item index in the beam.
+    pub(in crate::dose) wedge: Option<(PlacedWedge<'a>, usize)>,
     pub(in crate::dose) site: &'a Site,
     pub(in crate::dose) steps: StepLimits,
 }
@@ -100,6 +104,9 @@ fn standing<'a>(
             }
         }
     };
+    if let Some(obstacle) = jaws_beyond_leaves(field.delivered, banks) {
+        result.obstacles.push(obstacle);
+    }
     let upper_jaws = field.machine.collimation.jaw(field.machine.upper_jaws);
     Some(Standing {
         jaw_height_cm: upper_jaws
@@ -115,7 +122,36 @@ fn standing<'a>(
         margin_cm: field.site.technical.edge_margin_cm,
         steps: field.steps,
         couch: true,
+        wedge: field.wedge,
     })
+}
+
+/// Jaws that are open beyond the outermost leaves: what shields there is not known.
+fn jaws_beyond_leaves(delivered: &[Interval<'_>], banks: &[Bank<'_>]) -> Option<Obstacle> {
+    for bank in banks {
+        let (least, greatest) = (bank.boundaries_cm.first()?, bank.boundaries_cm.last()?);
+        let points = delivered
+            .iter()
+            .flat_map(|interval| [interval.start, interval.end]);
+        for point in points {
+            let across = match bank.axis {
+                LeafAxis::X => point.jaws_y_cm.value(),
+                LeafAxis::Y => point.jaws_x_cm.value(),
+            };
+            if let Some([low, high]) = across
+                && (*low < least - tolerance::POSITION_CM
+                    || *high > greatest + tolerance::POSITION_CM)
+            {
+                return Some(Obstacle {
+                    kind: ObstacleKind::Technique,
+                    message: format!(
+                        "the jaws are open to {low:.1} and {high:.1} cm, beyond the outermost leaves at {least:.1} and {greatest:.1} cm: what shields there is not known"
+                    ),
+                });
+            }
+        }
+    }
+    None
 }
 
 /// Blocks with outline, side and transmission.
@@ -192,7 +228,7 @@ fn conclude(
     let Ok(kernel) = beam.scatter_at(sums.effective_cm) else {
         return;
     };
-    let scatter_weight = 1.0;
+    let scatter_weight = scatter_weight(standing, sums, &kernel);
     let shaped = shaped_result(standing, sums, scatter_weight, field.steps);
     let fluence = sums.exposure.open_fluence + sums.exposure.leak_fluence;
     let scatter = sums.exposure.open_scatter + sums.exposure.leak_scatter;
@@ -203,9 +239,11 @@ fn conclude(
         (scatter_weight, equivalent_side_cm),
         field.tray,
     );
+    // A covered point has scatter without primary: no square is like that.
+    let has_square = equivalent_side_cm < kernel.sides_cm().1 - 0.01;
     result.squares = Some(Squares {
         collimator: CollimatorSquare::new(sums.jaw_side_cm),
-        phantom: Some(PointSquare::new(equivalent_side_cm)),
+        phantom: has_square.then(|| PointSquare::new(equivalent_side_cm)),
     });
     result.obstacles.extend(outside_range(&RangeQuestion {
         beam,

@@ -18,6 +18,9 @@ const HALF_CM: f64 = 20.0;
 /// Cells along a side.
 const CELLS: usize = 160;
 
+/// Cells along a side of a block of 1 cm: fine enough for a horn.
+const BLOCK_CELLS: usize = 4;
+
 /// The image, cropped to where something is open; row by row from the lowest y.
 #[derive(Clone, Debug, Default, PartialEq, Serialize)]
 pub struct FluenceImage {
@@ -98,17 +101,25 @@ impl FluenceSum {
         cells
     }
 
-    /// Every open cell: its edges along x and y, cm at the isocentre plane, and its fluence.
-    pub(super) fn open_cells(&self) -> Vec<([f64; 2], [f64; 2], f64)> {
-        let edges = |cell: usize| {
-            let low_cm = cell as f64 * CELL_CM - HALF_CM;
-            [low_cm, low_cm + CELL_CM]
+    /// Blocks of cells in which something is open: their edges along x and y, cm at the isocentre plane, and their mean
+    /// fluence.
+    pub(super) fn open_blocks(&self) -> Vec<([f64; 2], [f64; 2], f64)> {
+        let cells = self.cells();
+        let edges = |block: usize| {
+            let low_cm = (block * BLOCK_CELLS) as f64 * CELL_CM - HALF_CM;
+            [low_cm, low_cm + BLOCK_CELLS as f64 * CELL_CM]
         };
-        self.cells()
+        let count = CELLS / BLOCK_CELLS;
+        let mut blocks = vec![0.0; count * count];
+        for (index, fluence) in cells.into_iter().enumerate() {
+            let (row, column) = (index / CELLS / BLOCK_CELLS, index % CELLS / BLOCK_CELLS);
+            blocks[row * count + column] += fluence / (BLOCK_CELLS * BLOCK_CELLS) as f64;
+        }
+        blocks
             .into_iter()
             .enumerate()
             .filter(|(_, fluence)| *fluence > 1e-6)
-            .map(|(index, fluence)| (edges(index % CELLS), edges(index / CELLS), fluence))
+            .map(|(index, fluence)| (edges(index % count), edges(index / count), fluence))
             .collect()
     }
 

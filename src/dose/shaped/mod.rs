@@ -21,6 +21,7 @@ mod moments;
 mod opening;
 mod range;
 mod results;
+mod scatter_weight;
 mod spread;
 mod sum;
 mod trace;

@@ -180,17 +180,6 @@ impl Opening {
         });
         if low < high { [low, high] } else { [0.0, 0.0] }
     }
-
-    /// Open fluence and leak at a place, cm at the isocentre plane.
-    pub(super) fn fluence_at(&self, [x_cm, y_cm]: [f64; 2]) -> (f64, f64) {
-        let holds = |side: [f64; 2], at_cm: f64| side[0] <= at_cm && at_cm < side[1];
-        self.patches
-            .iter()
-            .filter(|patch| holds(patch.x_cm, x_cm) && holds(patch.y_cm, y_cm))
-            .fold((0.0, 0.0), |(open, leak), patch| {
-                (open + patch.open, leak + patch.leak)
-            })
-    }
 }
 
 impl Edges {

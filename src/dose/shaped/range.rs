@@ -43,6 +43,10 @@ fn outside(kind: ObstacleKind, why: &str) -> Obstacle {
     }
 }
 
+/// A square that scatters like an opening is known to this only, cm: a measured square itself comes back a hair smaller
+/// when its corners are rounded by the penumbra.
+const SMALLEST_SLACK_CM: f64 = 0.05;
+
 /// Why the result is outside the method's range; empty when it is inside.
 pub(super) fn outside_range(question: &RangeQuestion<'_>) -> Vec<Obstacle> {
     let mut found = Vec::new();
@@ -62,7 +66,8 @@ pub(super) fn outside_range(question: &RangeQuestion<'_>) -> Vec<Obstacle> {
         OneAperture::No => found.extend(modulation_obstacles(question)),
     }
     let smallest_cm = question.kernel.sides_cm().0;
-    if question.one_aperture == OneAperture::Yes && question.equivalent_side_cm < smallest_cm - 1e-6
+    if question.one_aperture == OneAperture::Yes
+        && question.equivalent_side_cm < smallest_cm - SMALLEST_SLACK_CM
     {
         found.push(outside(
             ObstacleKind::TableRange,
@@ -178,7 +183,7 @@ fn modulation_obstacles(question: &RangeQuestion<'_>) -> Vec<Obstacle> {
         ));
     }
     let open_percent = result.shares.open_primary_percent;
-    if !(open_percent >= limits.modulated_open_primary_percent) {
+    if open_percent.is_nan() || open_percent < limits.modulated_open_primary_percent {
         found.push(outside(
             ObstacleKind::UnderDevice,
             &format!(

@@ -54,6 +54,9 @@ pub(super) fn spread_of(
     if has_tray {
         terms.push(stated("tray", uncertainty.transmission_percent));
     }
+    if sums.wedge_share > 0.0 {
+        terms.push(stated("wedge", uncertainty.transmission_percent));
+    }
     if sums.couch_share > 0.0 {
         terms.push(stated("couch", uncertainty.transmission_percent));
     }

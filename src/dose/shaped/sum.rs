@@ -16,8 +16,8 @@ use crate::beam_model::scatter::{NoKernel, ScatterAtDepth};
 use crate::beam_model::{BeamModel, CouchArc, HeadScatter, OffAxisKind, OutOfRange, Penumbra};
 use crate::dose::aperture::collimator_square;
 use crate::dose::placement::BeamGeometry;
-use crate::dose::{FactorName, FieldModel, RayPoint};
-use crate::quantity::{CollimatorSquare, tolerance};
+use crate::dose::{FactorName, FieldModel, PlacedWedge, RayPoint};
+use crate::quantity::{CollimatorSquare, PointSquare, tolerance};
 
 /// Everything that does not change from moment to moment.
 pub(super) struct Standing<'a> {
@@ -35,6 +35,8 @@ pub(super) struct Standing<'a> {
     pub(super) jaw_height_cm: f64,
     /// Whether the couch counts by the gantry angle.
     pub(super) couch: bool,
+    /// The wedge, with its item index in every control point's wedge positions.
+    pub(super) wedge: Option<(PlacedWedge<'a>, usize)>,
 }
 
 /// Where the fluence beside the point is looked at, as shares of the margin: along the axes half-way and at its end,
@@ -123,6 +125,8 @@ pub(super) struct Sums {
     pub(super) in_phantom: Parts,
     /// The same times the off-axis ratio.
     pub(super) off_axis: Parts,
+    /// The same times the wedge.
+    pub(super) wedge: Parts,
     /// The same times the couch.
     pub(super) couch: Parts,
     /// Plain means: K(d, 0), Sc of the jaws, effective depth, SPD, off-axis radius, side of the jaws.
@@ -142,6 +146,8 @@ pub(super) struct Sums {
     /// Gap area over gap width of the leaves.
     pub(super) gap_area_cm2: f64,
     pub(super) gap_width_cm: f64,
+    /// Share of the meterset with the wedge in the beam.
+    pub(super) wedge_share: f64,
     /// Share of the meterset with the couch in the beam, and its transmission.
     pub(super) couch_share: f64,
     pub(super) fluence: FluenceSum,
@@ -192,6 +198,38 @@ impl Standing<'_> {
         self.model.beam
     }
 
+    /// What the wedge does at a moment: its factor for the square that scatters as the opening does, times its profile at
+    /// the point; `None` when it is out.
+    fn wedge_at(
+        &self,
+        moment: &Moment<'_>,
+        ray: RayPoint,
+        kernel: &ScatterAtDepth<'_>,
+        (exposure, depth_cm): (&Exposure, f64),
+    ) -> Result<Option<f64>, SumError> {
+        let Some((wedge, index)) = &self.wedge else {
+            return Ok(None);
+        };
+        let position = moment.between.start.wedges.get(*index);
+        match position.and_then(|position| position.in_beam.get()) {
+            Some(true) => {}
+            Some(false) => return Ok(None),
+            None => return Err(SumError::Missing("a wedge position")),
+        }
+        let fluence = exposure.open_fluence + exposure.leak_fluence;
+        let scatter = exposure.open_scatter + exposure.leak_scatter;
+        let (least_cm, greatest_cm) = kernel.sides_cm();
+        let side_cm = kernel
+            .side_with_scatter(scatter / (fluence * kernel.primary()))
+            .clamp(least_cm, greatest_cm);
+        let range = |range| SumError::Range(FactorName::Wedge, range);
+        let factor = wedge
+            .factor_at(depth_cm, PointSquare::new(side_cm))
+            .map_err(range)?;
+        let profile = wedge.profile_at(ray.projected_cm).map_err(range)?;
+        Ok(Some(factor.value * profile.value))
+    }
+
     fn couch_at(&self, moment: &Moment<'_>) -> Option<CouchArc> {
         let gantry_deg = moment.gantry_deg?;
         self.couch
@@ -210,6 +248,7 @@ struct Instant<'a> {
     below_table: bool,
     aperture_over_jaws: f64,
     off_axis_ratio: f64,
+    wedge: Option<f64>,
     couch: Option<CouchArc>,
     effective_cm: f64,
     least_depth_cm: f64,
@@ -253,8 +292,10 @@ impl<'a> Instant<'a> {
                 .map_err(|range| SumError::Range(FactorName::OffAxisRatio, range))?
                 .value
         };
+        let exposure = expose(opening, ray, &kernel, &standing.penumbra);
         Ok(Self {
-            exposure: expose(opening, ray, &kernel, &standing.penumbra),
+            wedge: standing.wedge_at(moment, ray, &kernel, (&exposure, tpr_depth_cm))?,
+            exposure,
             kernel,
             inverse_square: (beam.output.source_distance_cm / ray.spd_cm).powi(2),
             jaw_sc,
@@ -338,6 +379,7 @@ impl Sums {
             head: 0.0,
             in_phantom: Parts::default(),
             off_axis: Parts::default(),
+            wedge: Parts::default(),
             couch: Parts::default(),
             primary: 0.0,
             jaw_sc: 0.0,
@@ -351,6 +393,7 @@ impl Sums {
             beside: [0.0; PLACES.len()],
             gap_area_cm2: 0.0,
             gap_width_cm: 0.0,
+            wedge_share: 0.0,
             couch_share: 0.0,
             fluence: FluenceSum::new(),
             intervals: Vec::new(),
@@ -378,10 +421,12 @@ impl Sums {
         let parts = Parts::of(&at.exposure, primary);
         self.in_phantom.add(parts, to_here);
         self.off_axis.add(parts, to_here * at.off_axis_ratio);
-        self.couch.add(parts, to_here * at.off_axis_ratio * couch);
+        let wedge = at.wedge.unwrap_or(1.0);
+        self.wedge.add(parts, to_here * at.off_axis_ratio * wedge);
+        let factor = to_here * at.off_axis_ratio * wedge * couch;
+        self.couch.add(parts, factor);
         if at.below_table {
-            self.below_table
-                .add(parts, to_here * at.off_axis_ratio * couch);
+            self.below_table.add(parts, factor);
         }
         self.primary += weight * primary;
         self.jaw_sc += weight * at.jaw_sc;
@@ -402,6 +447,9 @@ impl Sums {
         }
         self.gap_area_cm2 += weight * opening.gap_area_cm2;
         self.gap_width_cm += weight * opening.gap_width_cm;
+        if at.wedge.is_some() {
+            self.wedge_share += weight;
+        }
         if at.couch.is_some() {
             self.couch_share += weight;
         }

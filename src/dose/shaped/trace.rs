@@ -33,6 +33,7 @@ pub(super) fn trace_of(
     let output = standing.model.beam.output;
     let in_phantom = sums.in_phantom.total(scatter_weight);
     let off_axis = sums.off_axis.total(scatter_weight);
+    let wedged = sums.wedge.total(scatter_weight);
     let couch = sums.couch.total(scatter_weight);
     let ratio = |a: f64, b: f64| if b == 0.0 { 0.0 } else { a / b };
     let several = sums.moments > 1;
@@ -109,10 +110,24 @@ pub(super) fn trace_of(
             source: format!("beam model, tray {}", tray.id),
         });
     }
+    if sums.wedge_share > 0.0
+        && let Some((wedge, _)) = &standing.wedge
+    {
+        factors.push(Factor {
+            name: FactorName::Wedge,
+            value: ratio(wedged, off_axis),
+            source: format!(
+                "beam model, wedge {} at {} degrees: factor on the axis for the square s times the profile at the point, in for {} % of the meterset{means}",
+                wedge.id(),
+                number(wedge.orientation_deg()),
+                number(100.0 * sums.wedge_share)
+            ),
+        });
+    }
     if sums.couch_share > 0.0 {
         factors.push(Factor {
             name: FactorName::Couch,
-            value: ratio(couch, off_axis),
+            value: ratio(couch, wedged),
             source: format!(
                 "beam model, by gantry angle: the couch is in the beam for {:.1} % of the meterset",
                 100.0 * sums.couch_share

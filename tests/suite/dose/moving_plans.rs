@@ -230,7 +230,7 @@ fn at_reference(depth_cm: f64) -> Vec<ReferencedDose> {
 fn verify_an_arc_with_point_depths() {
     let mut plan = arc(
         "CC",
-        &[(0.0, (40.0, 80.0)), (0.5, (20.0, 80.0)), (1.0, (0.0, 80.0))],
+        &[(0.0, (28.0, 80.0)), (0.5, (14.0, 80.0)), (1.0, (0.0, 80.0))],
     );
     plan.dose_references = vec![DoseReference {
         number: Given::stated(1),

@@ -175,6 +175,7 @@ fn verify_tg71_tables_isocentric_with_a_wedge_of_the_model() {
     field.wedge = PlacedWedge::new(&machine.beams[0].wedges[0], 0.0).map(|placed| FieldWedge {
         placed,
         share_in: 1.0,
+        index: 0,
     });
     let trace = dose_per_mu(&field).unwrap();
     assert_close(trace.factor(FactorName::Wedge).unwrap().value, 0.438, 1e-12);
@@ -457,8 +458,8 @@ fn verify_what_is_not_known_of_a_wedge_is_named_and_gives_no_number() {
         ),
         (
             |plan| plan.beams[0].blocks.push(Block::default()),
-            ObstacleKind::Technique,
-            &["blocks shape the wedged field"],
+            ObstacleKind::Reading,
+            &["Block Data (300A,0106)"],
         ),
     ];
     for (change, kind, parts) in cases {

@@ -18,10 +18,13 @@ const SEED: u64 = 20_261_201;
 /// Points nearer to an edge than this are reported apart, cm.
 const EDGE_CM: f64 = 1.0;
 
+/// Makes apertures and the point's projection on the isocentre plane, cm.
+type Maker = fn(&mut Random) -> (Vec<Aperture>, [f64; 2]);
+
 /// Apertures of every sort, 50 of each.
 fn fields() -> Vec<Field> {
     let mut random = Random::new(SEED);
-    let makers: [(&'static str, fn(&mut Random) -> (Vec<Aperture>, [f64; 2])); 7] = [
+    let makers: [(&'static str, Maker); 7] = [
         ("rectangle", rectangle),
         ("off-axis point", off_axis),
         ("L shape", l_shape),

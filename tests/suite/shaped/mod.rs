@@ -8,6 +8,7 @@ mod published_squares;
 mod random;
 mod reference;
 mod steps;
+mod wedged;
 mod wedged_fluence;
 
 /// Median, 99th percentile and maximum of the sizes of relative differences, per cent.

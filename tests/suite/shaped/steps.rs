@@ -129,11 +129,14 @@ fn blocked(random: &mut Random) -> Plan {
     plan
 }
 
+/// Makes a plan.
+type Maker = fn(&mut Random) -> Plan;
+
 #[test]
 fn validate_halving_every_step_changes_nothing() {
     let machine = kernel_machine(Spoilt::No);
     let mut random = Random::new(7);
-    let makers: [(&str, Technique, fn(&mut Random) -> Plan); 3] = [
+    let makers: [(&str, Technique, Maker); 3] = [
         ("sliding window", Technique::Dynamic, sliding),
         ("arc", Technique::Arc, arc),
         ("block", Technique::Blocked, blocked),

@@ -118,6 +118,11 @@ impl ScatterKernel {
 
 /// T(d, s) = TPR(d, s) Sp(s): dose on the axis of a square per unit in-air fluence.
 fn square_dose(beam: &BeamModel, depth_cm: f64, side_cm: f64) -> Result<f64, OutOfRange> {
+    // A TPR table gives both at once; a depth dose goes by the conversion.
+    if let TableKind::Tpr = beam.table_kind {
+        let tpr = beam.depth_table.value(depth_cm, side_cm)?;
+        return Ok(tpr * beam.output_factors.sp.value(side_cm, 0.0)?);
+    }
     let square = PointSquare::new(side_cm);
     Ok(beam.tpr(depth_cm, square)?.value * beam.sp(square)?.value)
 }

@@ -88,7 +88,8 @@ impl Sides {
     fn seen_from(self, shift_cm: f64) -> Self {
         Self {
             at_cm: self.at_cm.map(|edge_cm| edge_cm - shift_cm),
-            ..self
+            // How fluence changes around the point is looked at, not summed: the middle of the step will do.
+            travel_cm: [0.0; 2],
         }
     }
 }

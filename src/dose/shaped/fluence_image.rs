@@ -52,12 +52,17 @@ fn as_hex<S: Serializer>(values: &[u8], serializer: S) -> Result<S::Ok, S::Error
 #[derive(Clone, Debug)]
 pub(super) struct FluenceSum {
     differences: Vec<f64>,
+    /// First and last row, first and last column in which something was open.
+    rows: (usize, usize),
+    columns: (usize, usize),
 }
 
 impl FluenceSum {
     pub(super) fn new() -> Self {
         Self {
             differences: vec![0.0; CELLS * (CELLS + 2)],
+            rows: (CELLS, 0),
+            columns: (CELLS, 0),
         }
     }
 
@@ -66,7 +71,12 @@ impl FluenceSum {
         let place = |cm: f64| ((cm + HALF_CM) / CELL_CM).clamp(0.0, CELLS as f64);
         for patch in opening.patches.iter().filter(|patch| patch.open != 0.0) {
             let (x, y) = (patch.x_cm.map(place), patch.y_cm.map(place));
+            // An edge on a cell's own edge does not open the next one.
+            let last = |place: f64| (place.ceil() as usize).saturating_sub(1).min(CELLS - 1);
             let mut row = y[0] as usize;
+            self.rows = (self.rows.0.min(row), self.rows.1.max(last(y[1])));
+            let (first, end) = (x[0] as usize, last(x[1]));
+            self.columns = (self.columns.0.min(first), self.columns.1.max(end));
             while (row as f64) < y[1] && row < CELLS {
                 let covered =
                     (y[1].min(row as f64 + 1.0) - y[0].max(row as f64)) * weight * patch.open;
@@ -88,32 +98,36 @@ impl FluenceSum {
         }
     }
 
-    /// Fluence of every cell, row by row from the lowest y.
-    fn cells(&self) -> Vec<f64> {
-        let mut cells = Vec::with_capacity(CELLS * CELLS);
-        for row in self.differences.chunks(CELLS + 2) {
-            let mut sum = 0.0;
-            cells.extend(row.iter().take(CELLS).map(|difference| {
-                sum += difference;
-                sum
-            }));
-        }
-        cells
+    /// Rows in which something was open, from the lowest y: number of the row and the fluence of all its cells.
+    fn open_rows(&self) -> impl Iterator<Item = (usize, Vec<f64>)> {
+        let (low, high) = self.rows;
+        let rows = self.differences.chunks(CELLS + 2).enumerate();
+        rows.skip(low)
+            .take((high + 1).saturating_sub(low))
+            .map(|(row, differences)| {
+                let mut sum = 0.0;
+                let cells = differences.iter().take(CELLS).map(|difference| {
+                    sum += difference;
+                    sum
+                });
+                (row, cells.collect())
+            })
     }
 
     /// Blocks of cells in which something is open: their edges along x and y, cm at the isocentre plane, and their mean
     /// fluence.
     pub(super) fn open_blocks(&self) -> Vec<([f64; 2], [f64; 2], f64)> {
-        let cells = self.cells();
         let edges = |block: usize| {
             let low_cm = (block * BLOCK_CELLS) as f64 * CELL_CM - HALF_CM;
             [low_cm, low_cm + BLOCK_CELLS as f64 * CELL_CM]
         };
         let count = CELLS / BLOCK_CELLS;
         let mut blocks = vec![0.0; count * count];
-        for (index, fluence) in cells.into_iter().enumerate() {
-            let (row, column) = (index / CELLS / BLOCK_CELLS, index % CELLS / BLOCK_CELLS);
-            blocks[row * count + column] += fluence / (BLOCK_CELLS * BLOCK_CELLS) as f64;
+        for (row, cells) in self.open_rows() {
+            for (column, fluence) in cells.into_iter().enumerate() {
+                let block = row / BLOCK_CELLS * count + column / BLOCK_CELLS;
+                blocks[block] += fluence / (BLOCK_CELLS * BLOCK_CELLS) as f64;
+            }
         }
         blocks
             .into_iter()
@@ -125,21 +139,20 @@ impl FluenceSum {
 
     /// The image.
     pub(super) fn image(&self) -> FluenceImage {
-        let cells = self.cells();
-        let open = |index: &usize| cells[*index] > 1e-6;
-        let columns = || (0..cells.len()).filter(open).map(|index| index % CELLS);
-        let rows = || (0..cells.len()).filter(open).map(|index| index / CELLS);
-        let (Some(left), Some(right), Some(low), Some(high)) =
-            (columns().min(), columns().max(), rows().min(), rows().max())
-        else {
+        let (left, right) = self.columns;
+        let (low, high) = self.rows;
+        if left > right || low > high {
             return FluenceImage {
                 cell_cm: CELL_CM,
                 ..FluenceImage::default()
             };
-        };
-        let values = (low..=high)
-            .flat_map(|row| (left..=right).map(move |column| row * CELLS + column))
-            .map(|index| (cells[index].clamp(0.0, 1.0) * 255.0).round() as u8)
+        }
+        let values = self
+            .open_rows()
+            .flat_map(|(_, cells)| {
+                let open = cells.into_iter().skip(left).take(right - left + 1);
+                open.map(|fluence| (fluence.clamp(0.0, 1.0) * 255.0).round() as u8)
+            })
             .collect();
         FluenceImage {
             x_from_cm: left as f64 * CELL_CM - HALF_CM,

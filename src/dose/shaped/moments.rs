@@ -26,7 +26,8 @@ impl Default for StepLimits {
     fn default() -> Self {
         Self {
             leaf_cm: 0.25,
-            gantry_deg: 2.0,
+            // Two degrees, with room for the usual 178 control points of an arc of 358 degrees.
+            gantry_deg: 2.05,
             strip_cm: 0.1,
         }
     }

@@ -3,10 +3,12 @@ package `ompmc`, as reference data for the scatter integration of the program.
 
     python simulate.py run     --out WORK [--minutes 60] [--threads 2]
     python simulate.py reduce  --out WORK
+    python simulate.py edge
 
 `run` simulates and may be stopped and started again: it continues with the
 replicas that WORK does not hold yet. `reduce` makes the CSV files beside this
-script. README.md says the rest.
+script. `edge` simulates the profile across one field edge and writes it beside
+this script. README.md says the rest.
 
 What is simulated, cm: a point source at z = -90, water from z = 0 to 40 and
 60 x 60 across, isocentre at z = 10. No head, so no head scatter, sharp edges.
@@ -108,6 +110,7 @@ DENSITY = {
 SEED = 20_260
 # Electrons below this total energy, MeV, that cannot leave their voxel end there.
 ESAVE = 1.5
+EDGE_HISTORIES = 15_000_000
 
 
 def beamlets():
@@ -281,6 +284,44 @@ def run(out, minutes, threads, replicas):
         print(f"replica {number}: {histories:.3g} histories in {spent[-1]:.0f} s", flush=True)
 
 
+def edge(threads):
+    """Profile across the edge at x = 5 of a field 0 to 5 by -4 to 4 cm, at isocentre depth: for the penumbra."""
+    os.environ["OMP_NUM_THREADS"] = str(threads)
+    import ompmc
+
+    lines = np.round(np.arange(3.5, 6.55, 0.1), 6)
+    across = np.concatenate([[-BOX_HALF], lines, [BOX_HALF]])
+    along = np.array([-BOX_HALF, -3.0, 3.0, BOX_HALF])
+    down = np.array([0.0, ISOCENTRE_DEPTH - 0.5, ISOCENTRE_DEPTH + 0.5, BOX_DEPTH])
+    shape = (len(across) - 1, len(along) - 1, len(down) - 1)
+    water = ompmc.Geometry(
+        across, along, down, [MEDIUM], np.full(shape, 1.0, order="F"), np.ones(shape, dtype=np.int32, order="F")
+    )
+    began = time.monotonic()
+    with quiet():
+        dose, error = ompmc.calc_forward(
+            water,
+            source_of(ompmc, np.array([(0.0, 5.0, -4.0, 4.0)])),
+            [1.0],
+            physics=ompmc.Physics(n_split=1, seeds=(SEED, 1000)),
+            n_histories=EDGE_HISTORIES,
+            n_batches=40,
+        )
+    print(f"{EDGE_HISTORIES} histories in {time.monotonic() - began:.0f} s")
+    profile, relative = dose[1:-1, 1, 1], error[1:-1, 1, 1]
+    notes = [
+        "Monte Carlo across a field edge in water; made by tests/external/monte_carlo/simulate.py, see README.md",
+        f"package ompmc {ompmc.__version__} (PyPI), medium {MEDIUM}, made on {datetime.date.today().isoformat()}",
+        f"{EDGE_HISTORIES} histories, seeds ({SEED}, 1000); spectrum, source and box as in squares.csv",
+        f"field 0 to 5 by -4 to 4 cm, {ISOCENTRE_DEPTH:g} cm deep in the isocentre plane; "
+        "scored in 0.1 x 6 x 1 cm; any unit",
+    ]
+    with written("edge.csv", notes) as table:
+        table.writerow(["x_cm", "dose", "error"])
+        for low, high, value, one in zip(lines[:-1], lines[1:], profile, relative):
+            table.writerow([f"{(low + high) / 2:.2f}", f"{value / profile[0]:.5f}", f"{value * one / profile[0]:.5f}"])
+
+
 # ------------------------------------------------------------------ fields from beamlets
 
 
@@ -438,13 +479,17 @@ def written(name, notes):
 
 if __name__ == "__main__":
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
-    parser.add_argument("what", choices=("run", "reduce"))
-    parser.add_argument("--out", type=Path, required=True, help="folder of the replicas")
+    parser.add_argument("what", choices=("run", "reduce", "edge"))
+    parser.add_argument("--out", type=Path, help="folder of the replicas")
     parser.add_argument("--minutes", type=float, default=60, help="no replica is begun that would end later")
     parser.add_argument("--replicas", type=int, default=40, help="at most so many")
     parser.add_argument("--threads", type=int, default=2)
     given = parser.parse_args()
-    if given.what == "run":
+    if given.what == "edge":
+        edge(given.threads)
+    elif given.out is None:
+        parser.error("--out is missing")
+    elif given.what == "run":
         run(given.out, given.minutes, given.threads, given.replicas)
     else:
         reduce(given.out)

@@ -110,7 +110,7 @@ DENSITY = {
 SEED = 20_260
 # Electrons below this total energy, MeV, that cannot leave their voxel end there.
 ESAVE = 1.5
-EDGE_HISTORIES = 15_000_000
+EDGE_HISTORIES = 5_000_000
 
 
 def beamlets():

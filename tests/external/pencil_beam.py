@@ -10,14 +10,16 @@ for each source-surface distance; F is the fluence there. The data are
 the package is neither installed nor imported.
 
 How the data are read here:
-  - isocentric: the point lies in the isocentre plane, so the SSD is 1000 mm - d;
+  - isocentric: the SSD is 1000 mm - d, and the kernels act in the point's plane,
+    also where that is not the isocentre plane: rectangles and point are then
+    those of the point's plane, and the dose is per unit fluence there;
     the depth that attenuates is along the ray from the source to the point;
   - the value at radius 0 is a delta in one cell of 0.5 mm by 0.5 mm;
   - the source's penumbra that the file states, a full width at half maximum of
     5 mm at the isocentre, blurs the fluence as a Gaussian;
   - the fluence is flat: the file's primary fluence off the axis is left out;
   - beyond the last radius, 179.5 mm, the kernel is 0.
-No inverse-square factor arises in the isocentre plane. Lengths are mm inside
+No inverse-square factor is in the dose; whoever leaves the isocentre plane adds it. Lengths are mm inside
 `PencilBeam`, as in the file, and cm in its methods.
 """
 
@@ -87,12 +89,14 @@ class PencilBeam:
         shares = self.betas / (self.betas - self.m) * (np.exp(-self.m * along) - np.exp(-self.betas * along))
         return shares @ self.kernels[nearest]
 
-    def dose(self, rectangles, depth_cm, point=(0.0, 0.0)):
-        """At a point (x, y) of the isocentre plane. `rectangles` are (x1, x2, y1, y2, fluence), cm; where they
-        overlap, fluences add."""
-        x, y = point[:2]
-        along_cm = depth_cm * math.sqrt(1 + (x * x + y * y) / 100.0**2)
-        kernel = self.radial(depth_cm, along_cm)
+    def _kernel_at(self, depth_cm, point, distance_cm):
+        slant = math.hypot(point[0], point[1]) / distance_cm
+        return self.radial(depth_cm, depth_cm * math.hypot(1.0, slant))
+
+    def dose(self, rectangles, depth_cm, point=(0.0, 0.0), distance_cm=100.0):
+        """At a point (x, y) of a plane at this distance from the source. `rectangles` are (x1, x2, y1, y2, fluence)
+        in the same plane, cm; where they overlap, fluences add."""
+        kernel = self._kernel_at(depth_cm, point, distance_cm)
         line, radius = self._grid
         # Between the steps linear; the cell at 0 takes the delta.
         cells = np.interp(radius, self.radii, kernel, right=0.0)
@@ -110,13 +114,12 @@ class PencilBeam:
         along = ndtr((y2 - line) / sigma) - ndtr((y1 - line) / sigma)
         return across * table[:, 4, None], along
 
-    def dose_by_rings(self, rectangles, depth_cm, point=(0.0, 0.0), angles=720):
+    def dose_by_rings(self, rectangles, depth_cm, point=(0.0, 0.0), distance_cm=100.0, angles=720):
         """The same by another way of integrating: the delta, and rings about the point with the blurred fluence's
         mean over the angle. The kernel is linear between its radii; within 0.5 mm it keeps the value at 0.5 mm,
         outside the circle that has the delta's area."""
         x, y = point[:2]
-        along_cm = depth_cm * math.sqrt(1 + (x * x + y * y) / 100.0**2)
-        kernel = self.radial(depth_cm, along_cm)
+        kernel = self._kernel_at(depth_cm, point, distance_cm)
         node = 0.5 / math.sqrt(3)
         inner = CELL_MM / math.sqrt(math.pi)
         edges = np.concatenate([[inner], self.radii[1:]])

@@ -9,7 +9,7 @@
 use serde::Serialize;
 
 use super::{BeamModel, Collimation, JawAxis};
-use crate::quantity::normal_between;
+use crate::quantity::{normal_between, normal_share};
 
 /// Widths of the extra-focal Gaussian that are tried, cm at its own plane.
 const SIGMAS_CM: (f64, f64) = (0.3, 6.0);
@@ -174,11 +174,39 @@ impl HeadScatter {
         normal_between(x.bounds_cm, self.sigma_cm) * normal_between(y.bounds_cm, self.sigma_cm)
     }
 
+    /// How edges of a device at its height, cm from the source, are seen from a point, its coordinate along the same axis,
+    /// cm, at the isocentre plane.
+    #[must_use]
+    pub fn view(&self, point_cm: f64, device_cm: f64) -> HeadView {
+        let lever = (self.sad_cm - self.plane_cm) / (self.sad_cm - device_cm);
+        HeadView {
+            at_axis: point_cm * (1.0 - lever) / self.sigma_cm,
+            per_cm: device_cm / self.sad_cm * lever / self.sigma_cm,
+        }
+    }
+
     /// Relative in-air output with this share of the extra-focal source in view and this equivalent square of the jaws, cm.
     #[must_use]
     #[inline]
     pub fn output(&self, visible: f64, jaw_side_cm: f64) -> f64 {
         1.0 + self.extra_focal * visible + self.backscatter_per_cm * jaw_side_cm
+    }
+}
+
+/// Edges of one device along one axis as the extra-focal source lies behind them: their places in sigmas are straight in
+/// their coordinates.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct HeadView {
+    at_axis: f64,
+    per_cm: f64,
+}
+
+impl HeadView {
+    /// Share of the extra-focal source on the lower side of an edge, its coordinate in cm at the isocentre plane.
+    #[must_use]
+    #[inline]
+    pub fn share_below(&self, edge_cm: f64) -> f64 {
+        normal_share(edge_cm * self.per_cm + self.at_axis)
     }
 }
 

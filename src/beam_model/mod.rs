@@ -29,7 +29,7 @@ pub use beam::{
 pub use check::{ModelFinding, ModelSeverity, TablePlace, check_machine, tpr20_10_from_pdd20_10};
 pub use derive::{DerivedTable, derivable_grid, derive_table};
 pub use error::ModelError;
-pub use head_scatter::{HeadScatter, HeadScatterCell, HeadWindow};
+pub use head_scatter::{HeadScatter, HeadScatterCell, HeadView, HeadWindow};
 pub use load_machine::{load_machine, load_models};
 pub use machine::{
     Approval, Collimation, DataOrigin, JawAxis, JawPair, LeafBank, MachineModel, ModelSet,

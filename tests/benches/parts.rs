@@ -15,6 +15,8 @@ use std::path::{Path, PathBuf};
 use builder::{BeamSpec, DeviceSpec, PlanSpec, ReferenceSpec};
 use counterfoil::audit::{PlanEntry, PlanInput, Rivals, audit_plan};
 use counterfoil::beam_model::{ModelSet, load_models};
+use counterfoil::dose::{BeamRequest, ModelAnswer, StepLimits, calculate_beam};
+use counterfoil::intake::read_file;
 use counterfoil::plan::{Plan, identify, read_plan};
 use counterfoil::quantity::sha256_hex;
 use counterfoil::settings::Site;
@@ -100,6 +102,42 @@ fn audits(bencher: Bencher<'_, '_>, which: usize) {
     let models = load_models(&root().join("beam-models")).expect("models");
     let site = Site::default();
     bencher.bench(|| audit(black_box(&plan), &models, &site));
+}
+
+/// The two that are held against each other: everything that a run does to read the file of an arc, from the disk to the
+/// plan, and the calculation of its beam.
+#[divan::bench]
+fn arc_reads(bencher: Bencher<'_, '_>) {
+    let path = root().join("sample-plans/modulated-arc.dcm");
+    bencher.bench(|| {
+        let file = read_file(black_box(&path)).expect("reads");
+        let bytes = file.contents.bytes();
+        let kind = identify(bytes);
+        (kind, read_plan(bytes))
+    });
+}
+
+#[divan::bench]
+fn arc_calculates(bencher: Bencher<'_, '_>) {
+    let plan = read_plan(&one_arc()).expect("reads");
+    let models = load_models(&root().join("beam-models")).expect("models");
+    let site = Site::default();
+    let machine = &plan.beams[0].machine;
+    let model = models
+        .machine_for(machine.value().map_or("", String::as_str))
+        .expect("the sample's machine");
+    let request = BeamRequest {
+        plan: &plan,
+        beam_index: 0,
+        group: Some((0, 0)),
+        model: ModelAnswer::Found(model),
+        site: &site,
+        depth_row: None,
+        steps: StepLimits::default(),
+    };
+    let found = calculate_beam(&request);
+    assert!(found.trace.is_some() && found.obstacles.is_empty());
+    bencher.bench(|| calculate_beam(black_box(&request)));
 }
 
 fn audit(plan: &Plan, models: &ModelSet, site: &Site) -> PlanEntry {

@@ -3,7 +3,7 @@
 
 use std::sync::OnceLock;
 
-use super::quadrant::{Place, Quadrants, place};
+use super::quadrant::{Corners, Place, Quadrants};
 use super::{RadialDose, ScatterRow};
 use crate::beam_model::{BeamModel, OutOfRange, TableKind};
 use crate::quantity::PointSquare;
@@ -208,13 +208,19 @@ impl ScatterAtDepth<'_> {
     #[must_use]
     #[inline]
     pub fn rectangle(&self, x_cm: [f64; 2], y_cm: [f64; 2]) -> f64 {
-        let (x, y) = (x_cm.map(place), y_cm.map(place));
-        let low = over(&self.low.quadrants, x, y);
-        if self.share == 0.0 {
-            return low * self.scale;
+        let mut sum = self.sum();
+        sum.add(x_cm.map(Place::of), y_cm.map(Place::of), [1.0, 0.0]);
+        let [scatter, _] = sum.totals();
+        scatter
+    }
+
+    /// An empty sum of rectangles.
+    #[must_use]
+    pub fn sum(&self) -> ScatterSum<'_> {
+        ScatterSum {
+            kernel: self,
+            sums: [[[0.0; 4]; 2]; 2],
         }
-        let high = over(&self.high.quadrants, x, y);
-        (low + (high - low) * self.share) * self.scale
     }
 
     /// Beyond this distance from the point nothing was measured, cm: corners of the largest square.
@@ -248,7 +254,39 @@ impl ScatterAtDepth<'_> {
     }
 }
 
-#[inline]
-fn over(quadrants: &Quadrants, [x1, x2]: [Place; 2], [y1, y2]: [Place; 2]) -> f64 {
-    quadrants.at(x2, y2) - quadrants.at(x1, y2) - quadrants.at(x2, y1) + quadrants.at(x1, y1)
+/// Scatter at the point from many rectangles, each with two in-air fluences (through the opening and through what
+/// shields it, say), which are summed apart.
+#[derive(Clone, Debug)]
+pub struct ScatterSum<'k> {
+    kernel: &'k ScatterAtDepth<'k>,
+    /// By depth and fluence, each still in four parts.
+    sums: [[[f64; 4]; 2]; 2],
+}
+
+impl ScatterSum<'_> {
+    /// Adds a rectangle by the places of its lower and upper edges along x and y.
+    #[inline(always)]
+    pub fn add(&mut self, x: [Place; 2], y: [Place; 2], fluences: [f64; 2]) {
+        let corners = Corners::of(x, y);
+        for (sums, row) in self
+            .sums
+            .iter_mut()
+            .zip([self.kernel.low, self.kernel.high])
+        {
+            let parts = row.quadrants.over(&corners);
+            for (sum, fluence) in sums.iter_mut().zip(fluences) {
+                *sum = std::array::from_fn(|at| sum[at] + parts[at] * fluence);
+            }
+        }
+    }
+
+    /// The scatter by each of the two fluences.
+    #[must_use]
+    pub fn totals(&self) -> [f64; 2] {
+        let total = |[a, b, c, d]: [f64; 4]| (a + d) + (b + c);
+        let [low, high] = self.sums.map(|sums| sums.map(total));
+        [0, 1].map(|fluence| {
+            (low[fluence] + (high[fluence] - low[fluence]) * self.kernel.share) * self.kernel.scale
+        })
+    }
 }

@@ -19,7 +19,8 @@ mod radial;
 mod table_row;
 mod zero_field;
 
-pub use at_depth::{NoKernel, ScatterAtDepth, ScatterKernel};
+pub use at_depth::{NoKernel, ScatterAtDepth, ScatterKernel, ScatterSum};
+pub use quadrant::Place;
 pub use radial::RadialDose;
 pub use table_row::ScatterRow;
 pub use zero_field::ZeroField;

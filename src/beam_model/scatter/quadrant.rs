@@ -23,36 +23,45 @@ const GAUSS: [(f64, f64); 3] = [
 /// The table of one depth.
 #[derive(Clone, Debug)]
 pub(super) struct Quadrants {
-    /// Row-major, `LINES` by `LINES`; single precision, so that two depths stay in a core's cache.
-    values: Vec<f32>,
+    /// The four corners of each cell side by side, by the line along x, then along y: a rectangle is then four loads and
+    /// four products of four. Single precision holds it to 1e-7.
+    cells: Vec<[f32; 4]>,
 }
 
-/// A coordinate's place between two grid lines, with its sign.
+/// Cells along one axis.
+const CELLS: usize = LINES - 1;
+
+/// A coordinate's place between two grid lines: the weights of both, with the coordinate's sign.
 #[derive(Clone, Copy, Debug)]
-pub(crate) struct Place {
+pub struct Place {
     line: usize,
-    share: f64,
-    sign: f64,
+    weights: [f32; 2],
 }
 
-/// The place of a coordinate, cm; beyond the last line it stays there (nothing was measured so far out).
-#[inline]
-pub(crate) fn place(coordinate_cm: f64) -> Place {
-    let sign = if coordinate_cm < 0.0 { -1.0 } else { 1.0 };
-    let size_cm = coordinate_cm.abs();
-    let (start_cm, per_cm, first, count) = if size_cm < 4.0 {
-        (0.0, 10.0, 0, 40)
-    } else if size_cm < 12.0 {
-        (4.0, 4.0, 40, 32)
-    } else {
-        (12.0, 1.0, 72, 48)
-    };
-    let place = ((size_cm - start_cm) * per_cm).min(f64::from(count));
-    let cell = (place as usize).min(count as usize - 1);
-    Place {
-        line: first + cell,
-        share: place - cell as f64,
-        sign,
+impl Place {
+    /// The place of a coordinate, cm from the point in its plane; beyond the last line it stays there (nothing was
+    /// measured so far out).
+    #[must_use]
+    #[inline(always)]
+    pub fn of(coordinate_cm: f64) -> Self {
+        let size_cm = coordinate_cm.abs();
+        let (start_cm, per_cm, first, count) = if size_cm < 4.0 {
+            (0.0, 10.0, 0, 40)
+        } else if size_cm < 12.0 {
+            (4.0, 4.0, 40, 32)
+        } else {
+            (12.0, 1.0, 72, 48)
+        };
+        let place = (size_cm - start_cm) * per_cm;
+        let cell = (place as i32).min(count - 1);
+        let beyond = (place - f64::from(cell)) as f32;
+        // Not `min`: NaN is to stay NaN.
+        let share = if beyond > 1.0 { 1.0 } else { beyond };
+        let sign = 1.0_f32.copysign(coordinate_cm as f32);
+        Self {
+            line: (first + cell) as usize,
+            weights: [sign * (1.0 - share), sign * share],
+        }
     }
 }
 
@@ -85,34 +94,79 @@ impl Quadrants {
                 along[row * LINES + column] = sum;
             }
         }
-        let values = (0..LINES * LINES)
-            .map(|index| {
-                let (row, column) = (index / LINES, index % LINES);
-                ((along[index] + along[column * LINES + row]) / TAU) as f32
-            })
-            .collect();
-        Self { values }
+        let corner = |row: usize, column: usize| {
+            ((along[row * LINES + column] + along[column * LINES + row]) / TAU) as f32
+        };
+        let cells = (0..CELLS * CELLS).map(|index| {
+            let (row, column) = (index / CELLS, index % CELLS);
+            [
+                corner(row, column),
+                corner(row, column + 1),
+                corner(row + 1, column),
+                corner(row + 1, column + 1),
+            ]
+        });
+        Self {
+            cells: cells.collect(),
+        }
     }
 
-    /// Q at two places.
-    #[inline]
-    pub(super) fn at(&self, x: Place, y: Place) -> f64 {
-        let corner = x.line * LINES + y.line;
-        let (Some(near), Some(far)) = (
-            self.values.get(corner..corner + 2),
-            self.values.get(corner + LINES..corner + LINES + 2),
-        ) else {
-            return 0.0;
+    /// Each of the four values of a cell for the four corners of a rectangle, weighted and added: the sum of the four is the
+    /// integral over the rectangle.
+    #[inline(always)]
+    pub(super) fn over(&self, rectangle: &Corners) -> [f64; 4] {
+        let [a, b, c, d] = rectangle.cells;
+        let cell = |index: usize| self.cells.get(index);
+        let (Some(a), Some(b), Some(c), Some(d)) = (cell(a), cell(b), cell(c), cell(d)) else {
+            return [0.0; 4];
         };
-        let near = f64::from(near[0]) + f64::from(near[1] - near[0]) * y.share;
-        let far = f64::from(far[0]) + f64::from(far[1] - far[0]) * y.share;
-        x.sign * y.sign * (near + (far - near) * x.share)
+        let [wa, wb, wc, wd] = &rectangle.weights;
+        let value =
+            |cell: &[f32; 4], weights: &[f32; 4], at: usize| f64::from(cell[at] * weights[at]);
+        // In double precision, so that the order of the corners does not count.
+        std::array::from_fn(|at| {
+            (value(a, wa, at) + value(b, wb, at)) + (value(c, wc, at) + value(d, wd, at))
+        })
+    }
+}
+
+/// The corners of a rectangle: their cells and the weights of the cells' own corners, the same for every depth.
+pub(super) struct Corners {
+    cells: [usize; 4],
+    weights: [[f32; 4]; 4],
+}
+
+impl Corners {
+    #[inline(always)]
+    pub(super) fn of([x1, x2]: [Place; 2], [y1, y2]: [Place; 2]) -> Self {
+        let cell = |x: Place, y: Place| x.line * CELLS + y.line;
+        let product = |x: [f32; 4], y: [f32; 4]| std::array::from_fn(|at| x[at] * y[at]);
+        let less = |weights: [f32; 4]| std::array::from_fn(|at| -weights[at]);
+        let x = |place: Place| {
+            let [near, far] = place.weights;
+            [near, near, far, far]
+        };
+        let y = |place: Place| {
+            let [near, far] = place.weights;
+            [near, far, near, far]
+        };
+        let (x1_less, x2_full) = (less(x(x1)), x(x2));
+        let (y1_full, y2_full) = (y(y1), y(y2));
+        Self {
+            cells: [cell(x1, y1), cell(x1, y2), cell(x2, y1), cell(x2, y2)],
+            weights: [
+                product(x(x1), y1_full),
+                product(x1_less, y2_full),
+                product(less(x2_full), y1_full),
+                product(x2_full, y2_full),
+            ],
+        }
     }
 }
 
 #[cfg(test)]
 mod tests {
-    use super::{LINES, PARTS, lines_cm, place};
+    use super::{LINES, PARTS, Place, lines_cm};
 
     #[test]
     fn verify_places_name_the_cell_that_holds_the_coordinate() {
@@ -120,12 +174,14 @@ mod tests {
         assert_eq!(lines.len(), LINES);
         assert_eq!(PARTS.iter().map(|part| part.2).sum::<usize>() + 1, LINES);
         for coordinate in [0.0, 0.05, 3.999, 4.0, 7.3, 11.99, 12.0, 33.3, 59.9] {
-            let found = place(coordinate);
-            let back =
-                lines[found.line] + found.share * (lines[found.line + 1] - lines[found.line]);
-            assert!((back - coordinate).abs() < 1e-9, "{coordinate} {back}");
+            let found = Place::of(coordinate);
+            let [low, high] = found.weights.map(f64::from);
+            let back = low * lines[found.line] + high * lines[found.line + 1];
+            assert!((back - coordinate).abs() < 1e-5, "{coordinate} {back}");
+            assert!((low + high - 1.0).abs() < 1e-6);
         }
-        assert_eq!(place(80.0).line + 1, LINES - 1);
-        assert!(place(-2.0).sign < 0.0);
+        assert_eq!(Place::of(80.0).line + 1, LINES - 1);
+        let mirrored = Place::of(-2.0).weights;
+        assert_eq!(mirrored, Place::of(2.0).weights.map(|weight| -weight));
     }
 }

@@ -10,7 +10,8 @@ use super::range::{OneAperture, RangeQuestion, outside_range};
 use super::results::{ShapedResult, Shares};
 use super::scatter_weight::scatter_weight;
 use super::spread::{DepthSpread, spread_of};
-use super::sum::{Standing, SumError, Sums, add_up};
+use super::standing::{Standing, SumError};
+use super::sum::{Sums, add_up};
 use super::trace::trace_of;
 use crate::beam_model::{MachineModel, OffAxisKind};
 use crate::dose::delivery::Interval;
@@ -303,11 +304,7 @@ fn shaped_result(
     steps: StepLimits,
 ) -> ShapedResult {
     let at_point = sums.exposure.open_fluence;
-    let change = sums
-        .beside
-        .iter()
-        .map(|beside| (beside - at_point).abs())
-        .fold(0.0, f64::max);
+    let change = sums.surroundings.greatest_change(at_point);
     ShapedResult {
         shares: Shares::new(sums.couch.weighted(scatter_weight)),
         mean_leaf_gap_cm: (!standing.banks.is_empty() && sums.gap_width_cm > 0.0)

@@ -8,6 +8,7 @@ use std::sync::Arc;
 use serde::{Serialize, Serializer};
 
 use super::opening::Opening;
+use super::raster::Raster;
 
 /// Side of a cell, cm at the isocentre plane.
 const CELL_CM: f64 = 0.25;
@@ -17,6 +18,9 @@ const HALF_CM: f64 = 20.0;
 
 /// Cells along a side.
 const CELLS: usize = 160;
+
+/// Room for them.
+const ROOM: usize = CELLS + 2;
 
 /// Cells along a side of a block of 1 cm: fine enough for a horn.
 const BLOCK_CELLS: usize = 4;
@@ -48,70 +52,20 @@ fn as_hex<S: Serializer>(values: &[u8], serializer: S) -> Result<S::Ok, S::Error
     serializer.serialize_str(&text)
 }
 
-/// An image in the making: rows of differences, so that a rectangle costs a few additions a row.
+/// An image in the making.
 #[derive(Clone, Debug)]
-pub(super) struct FluenceSum {
-    differences: Vec<f64>,
-    /// First and last row, first and last column in which something was open.
-    rows: (usize, usize),
-    columns: (usize, usize),
-}
+pub(super) struct FluenceSum(Raster<ROOM>);
 
 impl FluenceSum {
     pub(super) fn new() -> Self {
-        Self {
-            differences: vec![0.0; CELLS * (CELLS + 2)],
-            rows: (CELLS, 0),
-            columns: (CELLS, 0),
-        }
+        Self(Raster::new(HALF_CM))
     }
 
     /// Adds an opening that stands for this share of the meterset.
     pub(super) fn add(&mut self, opening: &Opening, weight: f64) {
-        let place = |cm: f64| ((cm + HALF_CM) / CELL_CM).clamp(0.0, CELLS as f64);
         for patch in opening.patches.iter().filter(|patch| patch.open != 0.0) {
-            let (x, y) = (patch.x_cm.map(place), patch.y_cm.map(place));
-            // An edge on a cell's own edge does not open the next one.
-            let last = |place: f64| (place.ceil() as usize).saturating_sub(1).min(CELLS - 1);
-            let mut row = y[0] as usize;
-            self.rows = (self.rows.0.min(row), self.rows.1.max(last(y[1])));
-            let (first, end) = (x[0] as usize, last(x[1]));
-            self.columns = (self.columns.0.min(first), self.columns.1.max(end));
-            while (row as f64) < y[1] && row < CELLS {
-                let covered =
-                    (y[1].min(row as f64 + 1.0) - y[0].max(row as f64)) * weight * patch.open;
-                self.add_edge(row, x[0], covered);
-                self.add_edge(row, x[1], -covered);
-                row += 1;
-            }
+            self.0.add(patch.x_cm, patch.y_cm, weight * patch.open);
         }
-    }
-
-    /// From this place on the row holds more by `value`: a running sum of the row then gives each cell its share.
-    fn add_edge(&mut self, row: usize, place: f64, value: f64) {
-        let cell = place as usize;
-        let share = place - cell as f64;
-        let at = row * (CELLS + 2) + cell;
-        if let Some([here, next]) = self.differences.get_mut(at..at + 2) {
-            *here += value * (1.0 - share);
-            *next += value * share;
-        }
-    }
-
-    /// Rows in which something was open, from the lowest y: number of the row and the fluence of all its cells.
-    fn open_rows(&self) -> impl Iterator<Item = (usize, Vec<f64>)> {
-        let (low, high) = self.rows;
-        let rows = self.differences.chunks(CELLS + 2).enumerate();
-        rows.skip(low)
-            .take((high + 1).saturating_sub(low))
-            .map(|(row, differences)| {
-                let mut sum = 0.0;
-                let cells = differences.iter().take(CELLS).map(|difference| {
-                    sum += difference;
-                    sum
-                });
-                (row, cells.collect())
-            })
     }
 
     /// Blocks of cells in which something is open: their edges along x and y, cm at the isocentre plane, and their mean
@@ -123,7 +77,7 @@ impl FluenceSum {
         };
         let count = CELLS / BLOCK_CELLS;
         let mut blocks = vec![0.0; count * count];
-        for (row, cells) in self.open_rows() {
+        for (row, cells) in self.0.used_rows() {
             for (column, fluence) in cells.into_iter().enumerate() {
                 let block = row / BLOCK_CELLS * count + column / BLOCK_CELLS;
                 blocks[block] += fluence / (BLOCK_CELLS * BLOCK_CELLS) as f64;
@@ -139,8 +93,7 @@ impl FluenceSum {
 
     /// The image.
     pub(super) fn image(&self) -> FluenceImage {
-        let (left, right) = self.columns;
-        let (low, high) = self.rows;
+        let [(low, high), (left, right)] = self.0.used();
         if left > right || low > high {
             return FluenceImage {
                 cell_cm: CELL_CM,
@@ -148,15 +101,17 @@ impl FluenceSum {
             };
         }
         let values = self
-            .open_rows()
+            .0
+            .used_rows()
+            .into_iter()
             .flat_map(|(_, cells)| {
                 let open = cells.into_iter().skip(left).take(right - left + 1);
                 open.map(|fluence| (fluence.clamp(0.0, 1.0) * 255.0).round() as u8)
             })
             .collect();
         FluenceImage {
-            x_from_cm: left as f64 * CELL_CM - HALF_CM,
-            y_from_cm: low as f64 * CELL_CM - HALF_CM,
+            x_from_cm: self.0.edge_cm(left),
+            y_from_cm: self.0.edge_cm(low),
             cell_cm: CELL_CM,
             columns: right - left + 1,
             rows: high - low + 1,

@@ -4,7 +4,8 @@
 
 use super::bank::Bank;
 use super::opening::Opening;
-use crate::beam_model::{HeadScatter, JawAxis, MachineModel};
+use super::shared::Shared;
+use crate::beam_model::{HeadScatter, HeadView, JawAxis, MachineModel};
 use crate::dose::RayPoint;
 
 /// Heights of the devices, cm from the source.
@@ -45,20 +46,31 @@ pub(super) fn aperture_over_jaws(
     let Some(leaves_cm) = heights.leaves_cm else {
         return 1.0;
     };
-    let [x, y] = ray.projected_cm;
-    let jaws_x = head.window(opening.jaws_cm[0], x, heights.x_jaws_cm);
-    let jaws_y = head.window(opening.jaws_cm[1], y, heights.y_jaws_cm);
-    let through_jaws = head.visible(jaws_x, jaws_y);
-    let open: f64 = opening
-        .patches
-        .iter()
-        .filter(|patch| patch.open != 0.0)
-        .map(|patch| {
-            let patch_x = head.window(patch.x_cm, x, leaves_cm).and(jaws_x);
-            let patch_y = head.window(patch.y_cm, y, leaves_cm).and(jaws_y);
-            patch.open * head.visible(patch_x, patch_y)
-        })
-        .sum();
+    let [x_cm, y_cm] = ray.projected_cm;
+    let below = |view: HeadView, edges_cm: [f64; 2]| {
+        [view.share_below(edges_cm[0]), view.share_below(edges_cm[1])]
+    };
+    let jaws_x = below(head.view(x_cm, heights.x_jaws_cm), opening.jaws_cm[0]);
+    let jaws_y = below(head.view(y_cm, heights.y_jaws_cm), opening.jaws_cm[1]);
+    let through_jaws = between(jaws_x) * between(jaws_y);
+    let [leaves_x, leaves_y] = [x_cm, y_cm].map(|at_cm| head.view(at_cm, leaves_cm));
+    let mut along_y = Shared::new();
+    let mut open = 0.0;
+    for patch in opening.patches.iter().filter(|patch| patch.open != 0.0) {
+        // What is open through both: the later of the lower edges, the earlier of the upper ones.
+        let x = within(below(leaves_x, patch.x_cm), jaws_x);
+        let y = along_y.pair(patch.y_cm, |edge_cm| leaves_y.share_below(edge_cm));
+        let y = within(y, jaws_y);
+        open += patch.open * between(x) * between(y);
+    }
     let through_leaves = open + transmission * (through_jaws - open).max(0.0);
     head.output(through_leaves, jaw_side_cm) / head.output(through_jaws, jaw_side_cm)
+}
+
+fn between([lower, upper]: [f64; 2]) -> f64 {
+    (upper - lower).max(0.0)
+}
+
+fn within(share: [f64; 2], limits: [f64; 2]) -> [f64; 2] {
+    [share[0].max(limits[0]), share[1].min(limits[1])]
 }

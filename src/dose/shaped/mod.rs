@@ -11,18 +11,25 @@
 //! calls for is decided in `dose::beam`.
 
 mod bank;
+mod beside;
 mod blocks;
 mod calculate;
 mod depth_track;
 mod exposure;
 mod fluence_image;
 mod head;
+mod instant;
+mod jaw_scatter;
 mod moments;
 mod opening;
+mod parts;
 mod range;
+mod raster;
 mod results;
 mod scatter_weight;
+mod shared;
 mod spread;
+mod standing;
 mod sum;
 mod trace;
 

@@ -66,10 +66,13 @@ pub(super) struct Between<'a> {
 }
 
 impl Between<'_> {
-    fn edges(&self, start: [f64; 2], end: [f64; 2]) -> Edges {
+    #[inline]
+    fn edges(&self, [low, high]: [f64; 2], [end_low, end_high]: [f64; 2]) -> Edges {
+        let (low_way, high_way) = (end_low - low, end_high - high);
+        let half_step = self.step / 2.0;
         Edges {
-            at_cm: [0, 1].map(|side| start[side] + (end[side] - start[side]) * self.share),
-            travel_cm: [0, 1].map(|side| (end[side] - start[side]).abs() * self.step / 2.0),
+            at_cm: [low + low_way * self.share, high + high_way * self.share],
+            travel_cm: [low_way.abs() * half_step, high_way.abs() * half_step],
         }
     }
 
@@ -84,9 +87,14 @@ impl Between<'_> {
 }
 
 impl Opening {
-    /// Makes this the opening at a moment; room that is already there is used again. `None` when a position is
-    /// missing.
-    pub(super) fn set(&mut self, banks: &[Bank<'_>], at: Between<'_>) -> Option<()> {
+    /// Makes this the opening at a moment; room that is already there is used again. A leaf pair that moves further
+    /// than `leaf_step_cm` stands in several places, each for its part of the step. `None` when a position is missing.
+    pub(super) fn set(
+        &mut self,
+        banks: &[Bank<'_>],
+        at: Between<'_>,
+        leaf_step_cm: f64,
+    ) -> Option<()> {
         self.patches.clear();
         self.gap_area_cm2 = 0.0;
         self.gap_width_cm = 0.0;
@@ -104,7 +112,7 @@ impl Opening {
             [bank] => {
                 let through = bank.model.transmission;
                 self.push_background(limits, through);
-                self.push_gaps(bank, at, limits, (1.0, -through))?;
+                self.push_gaps(bank, (at, leaf_step_cm), limits, (1.0, -through))?;
             }
             [one, two] => self.push_stacked([one, two], at, limits)?,
             _ => return None,
@@ -125,15 +133,21 @@ impl Opening {
     fn push_gaps(
         &mut self,
         bank: &Bank<'_>,
-        at: Between<'_>,
+        at: (Between<'_>, f64),
         limits: [Edges; 2],
         (open, leak): (f64, f64),
     ) -> Option<()> {
-        for_each_gap(bank, at, limits, |gap| {
-            let (x, y) = gap.sides(bank.axis);
-            self.patches.push(Patch::new(x, y, (open, leak)));
-            self.gap_area_cm2 += gap.across.width_cm() * gap.along.width_cm();
-            self.gap_width_cm += gap.across.width_cm();
+        for_each_gap(bank, at, limits, |gap, part| {
+            let (along, across) = (gap.along, gap.across);
+            let fluences = (open * part, leak * part);
+            // Each in its own place: a rectangle made first and turned then is written twice.
+            match bank.axis {
+                LeafAxis::X => self.patches.push(Patch::new(along, across, fluences)),
+                LeafAxis::Y => self.patches.push(Patch::new(across, along, fluences)),
+            }
+            let width_cm = gap.across.width_cm() * part;
+            self.gap_area_cm2 += width_cm * gap.along.width_cm();
+            self.gap_width_cm += width_cm;
         })
     }
 
@@ -144,12 +158,14 @@ impl Opening {
         at: Between<'_>,
         limits: [Edges; 2],
     ) -> Option<()> {
+        // The layers cross at one time: no pair has steps of its own.
+        let whole = (at, f64::INFINITY);
         let [t1, t2] = banks.map(|bank| bank.model.transmission);
         self.push_background(limits, t1 * t2);
         let first = self.patches.len();
-        self.push_gaps(banks[0], at, limits, (0.0, t2 * (1.0 - t1)))?;
+        self.push_gaps(banks[0], whole, limits, (0.0, t2 * (1.0 - t1)))?;
         let second = self.patches.len();
-        self.push_gaps(banks[1], at, limits, (0.0, t1 * (1.0 - t2)))?;
+        self.push_gaps(banks[1], whole, limits, (0.0, t1 * (1.0 - t2)))?;
         let both_leak = (1.0 - t1) * (1.0 - t2) - 1.0;
         let end = self.patches.len();
         (self.gap_area_cm2, self.gap_width_cm) = (0.0, 0.0);
@@ -197,25 +213,29 @@ impl Edges {
     }
 
     /// What is between both pairs of edges.
+    #[inline]
     fn and(self, other: Self) -> Self {
-        let low = if self.at_cm[0] >= other.at_cm[0] {
-            self
+        let ([low, high], [low_travel, high_travel]) = (self.at_cm, self.travel_cm);
+        let ([other_low, other_high], other_travel) = (other.at_cm, other.travel_cm);
+        let (low, low_travel) = if low >= other_low {
+            (low, low_travel)
         } else {
-            other
+            (other_low, other_travel[0])
         };
-        let high = if self.at_cm[1] <= other.at_cm[1] {
-            self
+        let (high, high_travel) = if high <= other_high {
+            (high, high_travel)
         } else {
-            other
+            (other_high, other_travel[1])
         };
         Self {
-            at_cm: [low.at_cm[0], high.at_cm[1]],
-            travel_cm: [low.travel_cm[0], high.travel_cm[1]],
+            at_cm: [low, high],
+            travel_cm: [low_travel, high_travel],
         }
     }
 }
 
 impl Patch {
+    #[inline]
     const fn new(x: Edges, y: Edges, (open, leak): (f64, f64)) -> Self {
         Self {
             x_cm: x.at_cm,
@@ -242,22 +262,17 @@ impl Patch {
     }
 }
 
-impl Gap {
-    const fn sides(&self, axis: LeafAxis) -> (Edges, Edges) {
-        match axis {
-            LeafAxis::X => (self.along, self.across),
-            LeafAxis::Y => (self.across, self.along),
-        }
-    }
-}
+/// A pair stands in so many places in a step at most.
+const MOST_PARTS: f64 = 400.0;
 
-/// The radiation gaps of a bank inside the limits: a rounded leaf end lets radiation pass behind its tip by
-/// the model's offset, and leaves that meet are closed. `None` when positions are missing.
+/// The radiation gaps of a bank inside the limits, each with the part of the step that it stands for: a rounded leaf
+/// end lets radiation pass behind its tip by the model's offset, and leaves that meet are closed. `None` when positions
+/// are missing.
 fn for_each_gap(
     bank: &Bank<'_>,
-    at: Between<'_>,
+    (at, leaf_step_cm): (Between<'_>, f64),
     limits: [Edges; 2],
-    mut take: impl FnMut(Gap),
+    mut take: impl FnMut(Gap, f64),
 ) -> Option<()> {
     let positions = |point: &'_ ControlPoint| {
         point
@@ -275,31 +290,70 @@ fn for_each_gap(
         LeafAxis::X => (limits[0], limits[1]),
         LeafAxis::Y => (limits[1], limits[0]),
     };
-    let offset_cm = bank.model.leaf_end_offset_cm;
-    for pair in 0..pairs {
-        let width =
-            Edges::still([bank.boundaries_cm[pair], bank.boundaries_cm[pair + 1]]).and(across);
+    let (start, end) = (start.split_at(pairs), end.split_at(pairs));
+    let lower = start.0.iter().zip(end.0);
+    let upper = start.1.iter().zip(end.1);
+    // Most pairs lie under the jaws; the boundaries rise, as the model's do.
+    let covered = bank
+        .boundaries_cm
+        .partition_point(|side| *side <= across.at_cm[0]);
+    let pairs = bank.boundaries_cm.windows(2).zip(lower).zip(upper);
+    for ((sides, lower), upper) in pairs.skip(covered.saturating_sub(1)) {
+        if sides[0] >= across.at_cm[1] {
+            break;
+        }
+        let width = Edges::still([sides[0], sides[1]]).and(across);
         if width.width_cm() <= 0.0 {
             continue;
         }
-        let tips = at.edges(
-            [start[pair], start[pair + pairs]],
-            [end[pair], end[pair + pairs]],
-        );
-        if tips.width_cm() <= tolerance::POSITION_CM {
-            continue;
-        }
-        let ends = Edges {
-            at_cm: [tips.at_cm[0] - offset_cm, tips.at_cm[1] + offset_cm],
-            ..tips
+        let tips = Tips {
+            start_cm: [*lower.0, *upper.0],
+            end_cm: [*lower.1, *upper.1],
         };
-        let gap = ends.and(along);
-        if gap.width_cm() > 0.0 {
-            take(Gap {
-                along: gap,
-                across: width,
-            });
-        }
+        let offset_cm = bank.model.leaf_end_offset_cm;
+        tips.in_parts(at, leaf_step_cm, |tips, part| {
+            if tips.width_cm() <= tolerance::POSITION_CM {
+                return;
+            }
+            let ends = Edges {
+                at_cm: [tips.at_cm[0] - offset_cm, tips.at_cm[1] + offset_cm],
+                ..tips
+            };
+            let gap = ends.and(along);
+            if gap.width_cm() > 0.0 {
+                let across = width;
+                take(Gap { along: gap, across }, part);
+            }
+        });
     }
     Some(())
+}
+
+/// The tips of a leaf pair at two control points, lower and upper, cm.
+struct Tips {
+    start_cm: [f64; 2],
+    end_cm: [f64; 2],
+}
+
+impl Tips {
+    /// Where the tips stand in a step, or in each part of it when they move further than `leaf_step_cm`.
+    #[inline]
+    fn in_parts(&self, at: Between<'_>, leaf_step_cm: f64, mut take: impl FnMut(Edges, f64)) {
+        let whole = at.edges(self.start_cm, self.end_cm);
+        let way_cm = 2.0 * whole.travel_cm[0].max(whole.travel_cm[1]);
+        if way_cm <= leaf_step_cm * (1.0 + 1e-9) {
+            take(whole, 1.0);
+            return;
+        }
+        let parts = (way_cm / leaf_step_cm - 1e-9).ceil().min(MOST_PARTS);
+        for part in 0..parts as u32 {
+            let share = (f64::from(part) + 0.5) / parts - 0.5;
+            let at = Between {
+                share: at.share + at.step * share,
+                step: at.step / parts,
+                ..at
+            };
+            take(at.edges(self.start_cm, self.end_cm), 1.0 / parts);
+        }
+    }
 }

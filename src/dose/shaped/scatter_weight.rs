@@ -4,7 +4,8 @@
 //! is h(place), while the kernel supposes h(distance from the point). Horn and wedge at
 //! the point itself are factors of their own and are divided out.
 
-use super::sum::{Standing, Sums};
+use super::standing::Standing;
+use super::sum::Sums;
 use crate::beam_model::scatter::ScatterAtDepth;
 use crate::dose::PlacedWedge;
 use crate::quantity::tolerance;

@@ -1,7 +1,8 @@
 //! Expected spread of a scatter integration, 1 sigma.
 
 use super::results::ShapedResult;
-use super::sum::{Standing, Sums};
+use super::standing::Standing;
+use super::sum::Sums;
 use crate::beam_model::scatter::ScatterAtDepth;
 use crate::dose::{Spread, SpreadTerm};
 use crate::quantity::tolerance;

@@ -3,7 +3,8 @@
 //! is the sum itself.
 
 use super::depth_track::DepthAt;
-use super::sum::{Standing, Sums};
+use super::standing::Standing;
+use super::sum::Sums;
 use crate::beam_model::{BeamModel, JawAxis, OffAxisKind, Penumbra};
 use crate::dose::text::number;
 use crate::dose::{Factor, FactorName, Input, RayPoint, Trace, Tray};

@@ -110,9 +110,10 @@ fn facts(shaped: &ShapedResult) -> Vec<Fact> {
     facts.push(fact(
         "summed over",
         format!(
-            "{}: in one step no leaf or jaw moves more than {} cm and the gantry not more than {} degrees",
+            "{}: in one step no leaf or jaw moves more than {} cm (for head scatter no leaf more than {} cm) and the gantry not more than {} degrees",
             counted(shaped.moments as u64, "moment", "moments"),
             short(steps.leaf_cm, 3),
+            short(steps.aperture_cm, 3),
             short(steps.gantry_deg, 2)
         ),
     ));

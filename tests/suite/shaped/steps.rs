@@ -19,6 +19,7 @@ fn halved() -> StepLimits {
     let whole = StepLimits::default();
     StepLimits {
         leaf_cm: whole.leaf_cm / 2.0,
+        aperture_cm: whole.aperture_cm / 2.0,
         gantry_deg: whole.gantry_deg / 2.0,
         strip_cm: whole.strip_cm / 2.0,
     }

@@ -357,6 +357,7 @@ fn typed_arc() -> BeamCalculation {
     calculation.technique = Technique::Arc;
     calculation.view.point_cm = None;
     calculation.shaped = Some(ShapedResult {
+        intervals_from: counterfoil::dose::IntervalSource::ControlPoints,
         shares: Shares {
             open_primary_percent: 81.25,
             open_scatter_percent: 18.16,

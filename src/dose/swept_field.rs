@@ -14,7 +14,7 @@ use crate::plan::ControlPoint;
 use crate::quantity::tolerance;
 
 /// A measured factor on the axis that differs by more than this from what the sweep gives makes the model doubtful, per
-/// cent (an own choice: a measured factor and a jaw's sweep agree to about 1 %).
+/// cent (an own choice, above the 1 % at which `model check` warns).
 const MEASURED_LIMIT_PERCENT: f64 = 2.0;
 
 /// Calculates the field, whose jaws stand as at a control point, and writes what was found into `result`; `name` is the
@@ -245,7 +245,8 @@ fn reversal(
     // A field that the machine could not deliver the other way round is no error to be looked for.
     let motion = planned.reversed().motion(field.machine, at).ok()?;
     let turned = dose_of(&calculated(field, &motion.intervals(), blank))?;
-    let percent = 100.0 * (turned / swept - 1.0);
+    // Rounded to what is shown, so that no change is not a negative one.
+    let percent = (1000.0 * (turned / swept - 1.0)).round() / 10.0 + 0.0;
     (percent.abs() < REVERSAL_VISIBLE_PERCENT).then(|| {
         format!(
             "the wedge {} turned round would change the dose at this point by {percent:+.1} %: the point is a weak check of its orientation",

@@ -333,6 +333,21 @@ fn verify_leaves_outside_the_jaws_change_nothing() {
     assert!(percent(&leaved, &plain) < -0.5);
 }
 
+/// From a hair of an angle, which is the open field, to the sweep's own: less and less on the axis.
+#[test]
+fn property_steeper_angles_let_less_through() {
+    let mut before = 1.0;
+    for angle_deg in [0.1, 15.0, 30.0, 45.0, 59.9, 60.0] {
+        let factor = input(&calculate(&plan(angle_deg, 0.0, [0.0, 0.0])), "WF_eff");
+        assert!(factor < before, "{angle_deg} {factor} {before}");
+        if angle_deg < 1.0 {
+            // w = 0.001: exp(0.55) - 1 = 0.73 times that is what the meterset grows by.
+            assert_close(factor, 1.0, 1e-3);
+        }
+        before = factor;
+    }
+}
+
 /// 1 MU of the sweep is not 1 MU of the open field: out of the beam, the wedge changes nothing.
 #[test]
 fn verify_a_wedge_that_stays_out_is_an_open_field() {

@@ -3,7 +3,8 @@
 //! and a smaller angle by the mixing rule. The model has neither head scatter nor horn, so the fluence is all.
 
 use counterfoil::beam_model::{
-    DepthInterpolation, Grid, JawAxis, MachineModel, WedgeBody, WedgeModel, WedgeSweep,
+    DepthInterpolation, Grid, JawAxis, MachineModel, ModelFinding, ModelSeverity, WedgeBody,
+    WedgeModel, WedgeSweep, check_machine,
 };
 use counterfoil::dose::{StepLimits, Technique};
 use counterfoil::plan::{Plan, Wedge, WedgeKind, WedgePosition};
@@ -181,6 +182,32 @@ fn validate_the_models_sweep_against_the_kernel_under_an_exponential_fluence() {
     assert!(found.median <= 0.1 && found.p99 <= 0.3 && found.maximum <= 0.3);
 }
 
+/// Half the step of jaw and moment.
+#[test]
+fn validate_halved_steps_change_nothing() {
+    let whole = StepLimits::default();
+    let half = StepLimits {
+        leaf_cm: whole.leaf_cm / 2.0,
+        ..whole
+    };
+    for (orientation_deg, point_cm) in [(0.0, [0.0, 0.1]), (180.0, [2.0, 3.3]), (0.0, [0.0, -3.9])]
+    {
+        let case = Case {
+            orientation_deg,
+            angle_deg: 60.0,
+            x_cm: [-6.0, 6.0],
+            y_cm: [-6.3, 5.1],
+            point_cm,
+            depth_cm: 10.0,
+        };
+        let machine = machine(0.1, JawAxis::Y);
+        let dose = |steps| cgy_per_mu(&calculate(&plan(case), &machine, steps));
+        let percent = 100.0 * (dose(half) / dose(whole) - 1.0);
+        println!("{case:?}: {percent:+.4} %");
+        assert!(percent.abs() <= 0.05, "{percent}");
+    }
+}
+
 /// A guard on the comparison: the same with the mixing taken as a share of MU, or the wedge turned round, must fail it.
 #[test]
 fn verify_the_comparison_sees_a_wrong_mix_and_a_turned_wedge() {
@@ -215,4 +242,62 @@ fn verify_the_comparison_sees_a_wrong_mix_and_a_turned_wedge() {
         / kernel.square_dose(10.0, 10.0);
     let by_mu = sixty / 3.0 + 2.0 * open / 3.0;
     assert!((found / by_mu - 1.0).abs() > 0.01, "{found} {by_mu}");
+}
+
+/// Sides and depths of a measured table, cm.
+const TABLE_SIDES_CM: [f64; 3] = [6.0, 10.0, 16.0];
+const TABLE_DEPTHS_CM: [f64; 3] = [5.0, 10.0, 20.0];
+
+/// What `model check` says of a measured factor: here the kernel's own, times `spoilt`.
+fn beside_the_sweep(spoilt: f64) -> ModelFinding {
+    let kernel = kernel();
+    let mut machine = machine(0.1, JawAxis::Y);
+    let mut values = Vec::new();
+    for depth_cm in TABLE_DEPTHS_CM {
+        for side_cm in TABLE_SIDES_CM {
+            let jaws_cm = [-side_cm / 2.0, side_cm / 2.0];
+            let swept = exact(
+                Case {
+                    orientation_deg: 0.0,
+                    angle_deg: 60.0,
+                    x_cm: jaws_cm,
+                    y_cm: jaws_cm,
+                    point_cm: [0.0, 0.0],
+                    depth_cm,
+                },
+                0.1,
+            );
+            let open = 0.8 * kernel.square_dose(side_cm, depth_cm) / kernel.square_dose(10.0, 10.0);
+            values.push(spoilt * swept / open);
+        }
+    }
+    let factor = Grid::new(
+        "6/factor.csv",
+        ("depth_cm", TABLE_DEPTHS_CM.to_vec()),
+        ("side_cm", TABLE_SIDES_CM.to_vec()),
+        values,
+        DepthInterpolation::Linear,
+    );
+    if let WedgeBody::Dynamic(sweep) = &mut machine.beams[0].wedges[0].body {
+        sweep.factor = Some(factor.unwrap());
+    }
+    check_machine(&machine, jiff::civil::date(2026, 12, 1))
+        .into_iter()
+        .find(|finding| finding.message.contains("comes to"))
+        .unwrap()
+}
+
+/// The check integrates the sweep by itself; the measured factors here are the kernel under the ideal fluence.
+#[test]
+fn verify_model_check_holds_a_measured_factor_against_the_sweep() {
+    let right = beside_the_sweep(1.0);
+    println!("{right}");
+    assert_eq!(right.severity, ModelSeverity::Note);
+    assert!(right.measured.unwrap().abs() <= 0.3, "{right}");
+    // Three per cent too much: 1 / 1.03 - 1 = -2.9 %.
+    let wrong = beside_the_sweep(1.03);
+    assert_eq!(wrong.severity, ModelSeverity::Warning);
+    assert!((wrong.measured.unwrap() + 2.9).abs() <= 0.3, "{wrong}");
+    assert_eq!(wrong.table.as_deref(), Some("6/factor.csv"));
+    assert!(wrong.message.contains("6/sweep.csv"), "{wrong}");
 }

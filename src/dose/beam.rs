@@ -16,8 +16,7 @@ use super::prerequisite::{
 };
 use super::shaped::{DepthTrack, ShapedField, calculate_shaped, track_depths};
 use super::spread::expected_spread;
-use super::sweep::motion_beside_sweep;
-use super::swept_field::calculate_swept;
+use super::sweep::{calculate_swept, motion_beside_sweep};
 use super::technique::{
     classify_delivered, jaws_are_the_wedge, technique_obstacles, tilt_obstacles, wedge_in,
     wedged_field_is_integrated, wedges_stay_out,

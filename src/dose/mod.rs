@@ -25,7 +25,6 @@ mod ray;
 mod shaped;
 mod spread;
 mod sweep;
-mod swept_field;
 mod technique;
 mod text;
 mod trace;

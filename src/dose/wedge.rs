@@ -1,6 +1,6 @@
 //! Wedges of a plan's beam: which one is in, for what share of the meterset,
 //! what the beam model has under its ID, and how it lies across the field.
-//! What it does to the dose is worked out in `wedge_factor`, for a dynamic one in `sweep` and `swept_field`.
+//! What it does to the dose is worked out in `wedge_factor`, for a dynamic one in `sweep`.
 
 use super::delivery::Interval;
 use super::sweep::PlannedSweep;

@@ -269,6 +269,10 @@ fn verify_the_result_names_what_it_took_from_the_model() {
     ] {
         assert!(remark.contains(part), "`{part}` is not in: {remark}");
     }
+    // The picture shows the field of the plan and where the jaw stops.
+    assert_eq!(result.view.jaws_y_cm, Some([-5.0, 6.0]));
+    let last = result.view.last.as_ref().unwrap();
+    assert_eq!(last.jaws_y_cm, Some([-5.0, -4.5]));
     // In the open field of the same jaws, with the same engine: the beam without its wedge, beside a leaf-less engine the factor
     // formalism, which differs by what an equivalent square is worth.
     let mut open = with_jaws(plan(30.0, 180.0, [0.0, 0.0]), [-6.0, 6.0], [-5.0, 6.0]);

@@ -2,14 +2,16 @@
 //! model: the sweep goes through the scatter integration, and beside the result
 //! stands what a person needs to check it: the fluence at the point, the dose
 //! over that of the open field, the measured factor where the model has one, and whether the point would show a wedge
-//! turned round. The motion itself is worked out in `sweep`.
+//! turned round. The motion itself is worked out in `motion`.
 
-use super::delivery::Interval;
-use super::shaped::{IntervalSource, ShapedField, calculate_shaped};
-use super::sweep::{JawMotion, PlannedSweep};
-use super::text::number;
-use super::wedge_factor::{POSITION_SIGMA_CM, REVERSAL_VISIBLE_PERCENT};
-use super::{BeamCalculation, Input, Obstacle, ObstacleKind, Spread, SpreadTerm};
+use super::motion::JawMotion;
+use super::planned::PlannedSweep;
+use crate::dose::aperture::view_between;
+use crate::dose::delivery::Interval;
+use crate::dose::shaped::{IntervalSource, ShapedField, calculate_shaped};
+use crate::dose::text::number;
+use crate::dose::wedge_factor::{POSITION_SIGMA_CM, REVERSAL_VISIBLE_PERCENT};
+use crate::dose::{BeamCalculation, Input, Obstacle, ObstacleKind, Spread, SpreadTerm};
 use crate::plan::ControlPoint;
 use crate::quantity::tolerance;
 
@@ -19,7 +21,7 @@ const MEASURED_LIMIT_PERCENT: f64 = 2.0;
 
 /// Calculates the field, whose jaws stand as at a control point, and writes what was found into `result`; `name` is the
 /// wedge in words.
-pub(super) fn calculate_swept(
+pub(in crate::dose) fn calculate_swept(
     field: &ShapedField<'_>,
     (planned, name): (&PlannedSweep<'_>, &str),
     at: &ControlPoint,
@@ -45,6 +47,9 @@ pub(super) fn calculate_swept(
     result.remarks.push(motion.in_words(name));
     if let Some(shaped) = &mut result.shaped {
         shaped.intervals_from = IntervalSource::ModelSweep;
+        // The picture shows where the jaw ends, which no control point states.
+        let ends = motion.last_point();
+        result.view.last = ends.and_then(|last| view_between(field.beam, at, last).last);
     }
     let Some(swept) = result.trace.as_ref().map(|trace| trace.dose_per_mu_cgy) else {
         return;
@@ -160,7 +165,7 @@ fn widen_spread(
     let pair = field
         .machine
         .collimation
-        .jaw(motion.planned().sweep().moves_along);
+        .jaw(motion.planned.sweep.moves_along);
     let share = motion.share(position_cm);
     if let Some(transmission) = pair.and_then(|pair| pair.transmission)
         && share > 0.0

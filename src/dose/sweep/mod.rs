@@ -25,8 +25,7 @@
 //!
 //! which is also the fluence at p per MU of the beam; between e and p2 it is 1. The table is linear between its rows, so
 //! a jaw that moves evenly from row to row delivers exactly this. What such a motion does to the dose is integrated in
-//! `shaped`; what is told
-//! about it stands in `field` and `words`.
+//! `shaped`; what is told about it stands in `field` and `words`.
 
 mod field;
 mod motion;

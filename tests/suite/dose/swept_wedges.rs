@@ -394,7 +394,7 @@ fn verify_what_a_sweep_cannot_make_is_named_and_gives_no_number() {
         ObstacleKind,
         &'static [&'static str],
     );
-    let cases: [Case; 14] = [
+    let cases: [Case; 15] = [
         (
             |plan, _| first_wedge(plan).angle_deg = Given::stated(70.0),
             ObstacleKind::Model,
@@ -451,6 +451,15 @@ fn verify_what_a_sweep_cannot_make_is_named_and_gives_no_number() {
             },
             ObstacleKind::TableRange,
             &["sweep of the wedge E60", "position_cm 10.10", "-20 to 10"],
+        ),
+        // At the thick end the table begins at -20.
+        (
+            |plan, machine| {
+                machine.collimation.jaws.clear();
+                *plan = with_jaws(plan.clone(), [-6.0, 6.0], [-20.5, 6.0]);
+            },
+            ObstacleKind::TableRange,
+            &["sweep of the wedge E60", "position_cm -20.50"],
         ),
         (
             |plan, machine| {

@@ -72,7 +72,8 @@ pub struct WedgeTables {
 ///
 /// A field uses the part from its own open jaw position to [`Self::closing_gap_cm`] short of the fixed jaw: the
 /// share that the table has at the open position is delivered with the jaw standing there, and the meterset of the
-/// beam belongs to the share at the end of that part.
+/// beam belongs to the share at the end of that part. A smaller angle than the wedge's own mixes the sweep with the open
+/// field by what both give on the axis; the arithmetic stands in `dose`.
 #[derive(Clone, Debug)]
 pub struct WedgeSweep {
     /// The axis of the moving jaw pair.
@@ -82,7 +83,8 @@ pub struct WedgeSweep {
     /// Share of the sweep's meterset, 0 to 1, that has been delivered when the jaw passes position_cm (at the
     /// isocentre plane, positive towards the thin end). Where the first row is above 0, that share comes with the jaw at rest there.
     pub delivered: Grid,
-    /// Measured factor on the axis, as [`WedgeTables::factor`]; `None` when not given.
+    /// Measured factor on the axis of squares for the sweep's own angle, as [`WedgeTables::factor`]; `None` when not given.
+    /// It is held against the sweep and never put in its place: the dose rests on the sweep.
     pub factor: Option<Grid>,
 }
 

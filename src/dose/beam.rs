@@ -16,9 +16,10 @@ use super::prerequisite::{
 };
 use super::shaped::{DepthTrack, ShapedField, calculate_shaped, track_depths};
 use super::spread::expected_spread;
+use super::sweep::{calculate_swept, motion_beside_sweep};
 use super::technique::{
     classify_delivered, jaws_are_the_wedge, technique_obstacles, tilt_obstacles, wedge_in,
-    wedged_field_is_shaped, wedges_stay_out,
+    wedged_field_is_integrated, wedges_stay_out,
 };
 use super::wedge::wedge_of;
 use super::wedge_factor::reversal_remark;
@@ -120,13 +121,14 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         });
     }
     let integrated = is_shaped(technique)
-        || technique == Technique::Wedge && wedged_field_is_shaped(beam, &delivered);
+        || technique == Technique::Wedge && wedged_field_is_integrated(beam, &delivered);
     if beam.radiation.value() == Some(&RadiationType::Photon)
         && devices.uncovered.is_empty()
         && let Some(model) = model
     {
         // A wedge that could not be placed must not pass for an open field.
-        let wedged = technique == Technique::Wedge && devices.wedge.is_some();
+        let placed = devices.wedge.is_some() || devices.swept.is_some();
+        let wedged = technique == Technique::Wedge && placed;
         if technique == Technique::Static || wedged && !integrated {
             calculate(
                 request,
@@ -137,7 +139,10 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
                 &devices,
                 &mut result,
             );
-        } else if integrated && technique_obstacles.is_empty() {
+        } else if integrated
+            && technique_obstacles.is_empty()
+            && (wedged || technique != Technique::Wedge)
+        {
             calculate_by_integration(
                 request,
                 (beam, &delivered),
@@ -307,12 +312,16 @@ fn devices_of<'a>(
     } else if wedge_in(beam, delivered) {
         let found = wedge_of(beam, delivered, model.map(|model| model.beam));
         devices.wedge = found.wedge;
+        if found.swept.is_some() {
+            devices.uncovered.extend(motion_beside_sweep(technique));
+        }
+        devices.swept = found.swept;
         devices.uncovered.extend(found.obstacles);
         devices.remarks.extend(found.remarks);
     }
     if let (Some(model), Some(gantry_deg)) = (model, at.gantry_deg.get())
         && !is_shaped(technique)
-        && !(technique == Technique::Wedge && wedged_field_is_shaped(beam, delivered))
+        && !(technique == Technique::Wedge && wedged_field_is_integrated(beam, delivered))
     {
         let couch_deg = at.couch_deg.get().unwrap_or_default();
         couch(model.beam, gantry_deg, couch_deg, depths, &mut devices);
@@ -451,22 +460,25 @@ fn calculate_by_integration(
     ) else {
         return;
     };
-    calculate_shaped(
-        &ShapedField {
-            beam,
-            delivered,
-            machine,
-            model,
-            geometry,
-            depths: track,
-            depth_sigma: depth_sigma(depth.basis, request.site),
-            tray: devices.tray.as_ref(),
-            wedge: devices.wedge.map(|wedge| (wedge.placed, wedge.index)),
-            site: request.site,
-            steps: request.steps,
-        },
-        result,
-    );
+    let field = ShapedField {
+        beam,
+        delivered,
+        machine,
+        model,
+        geometry,
+        depths: track,
+        depth_sigma: depth_sigma(depth.basis, request.site),
+        tray: devices.tray.as_ref(),
+        wedge: devices.wedge.map(|wedge| (wedge.placed, wedge.index)),
+        site: request.site,
+        steps: request.steps,
+    };
+    match (&devices.swept, delivered.first()) {
+        (Some((planned, name)), Some(first)) => {
+            calculate_swept(&field, (planned, name), first.start, result);
+        }
+        _ => calculate_shaped(&field, result),
+    }
 }
 
 /// 1-sigma uncertainty of a depth, cm, and its basis in words.

@@ -24,6 +24,7 @@ mod proof;
 mod ray;
 mod shaped;
 mod spread;
+mod sweep;
 mod technique;
 mod text;
 mod trace;
@@ -44,7 +45,9 @@ pub use outcome::{
 };
 pub use proof::prove;
 pub use ray::RayPoint;
-pub use shaped::{ControlPointDose, FluenceImage, ShapedResult, Shares, StepLimits};
+pub use shaped::{
+    ControlPointDose, FluenceImage, IntervalSource, ShapedResult, Shares, StepLimits,
+};
 pub use spread::expected_spread;
 pub use technique::classify;
 pub use trace::{Factor, FactorName, Input, Trace};

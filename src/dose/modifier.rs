@@ -4,6 +4,7 @@
 
 use super::delivery::turn_between_deg;
 use super::depth_question::DepthFindings;
+use super::sweep::PlannedSweep;
 use super::{DepthBasis, FieldWedge, Obstacle, ObstacleKind, Tray};
 use crate::beam_model::{BeamModel, CouchArc};
 use crate::plan::Beam;
@@ -16,6 +17,8 @@ pub(super) struct Modifiers<'a> {
     pub(super) tray: Option<Tray>,
     /// A wedge that the model knows; filled in by the caller, who knows where meterset accrues.
     pub(super) wedge: Option<FieldWedge<'a>>,
+    /// A dynamic wedge that a sweep of the model makes, with its name in words; filled in likewise.
+    pub(super) swept: Option<(PlannedSweep<'a>, String)>,
     /// The couch, where the model has it in the beam.
     pub(super) couch: Option<CouchArc>,
     /// Hardware that no table covers: with one of these no number is calculated.

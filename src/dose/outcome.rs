@@ -270,6 +270,7 @@ pub struct BeamView {
     /// The dose point's projection [x, y].
     pub point_cm: Option<[f64; 2]>,
     /// Jaws and leaves of the control point where dose ends; `None` when they stand as where it begins.
+    /// Of a dynamic wedge that the plan does not spell out, where the beam model's sweep ends.
     pub last: Option<LastAperture>,
 }
 

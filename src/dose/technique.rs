@@ -58,10 +58,23 @@ pub(super) fn classify_delivered(beam: &Beam, intervals: &[Interval<'_>]) -> Tec
 }
 
 /// Whether leaves or blocks, and not jaws alone, shape a wedged field.
-pub(super) fn wedged_field_is_shaped(beam: &Beam, intervals: &[Interval<'_>]) -> bool {
+fn wedged_field_is_shaped(beam: &Beam, intervals: &[Interval<'_>]) -> bool {
     let at = intervals.first().map(|interval| interval.start);
     let leaves = at.map(|point| leaves_at(beam, point));
     !beam.blocks.is_empty() || !matches!(leaves, Some(Leaves::Outside) | None)
+}
+
+/// Whether a wedged field is integrated and not multiplied out: leaves or blocks shape it, or a jaw makes its wedge.
+pub(super) fn wedged_field_is_integrated(beam: &Beam, intervals: &[Interval<'_>]) -> bool {
+    let points = delivering_points(intervals);
+    let dynamic_in = beam.wedges.iter().enumerate().any(|(index, wedge)| {
+        let in_beam = |point: &&ControlPoint| {
+            let position = point.wedges.get(index);
+            position.and_then(|wedge| wedge.in_beam.get()) != Some(false)
+        };
+        wedge.kind.value() == Some(&WedgeKind::Dynamic) && points.iter().any(in_beam)
+    });
+    dynamic_in || wedged_field_is_shaped(beam, intervals)
 }
 
 /// Whether a dynamic wedge is in, and the control points spell out how a jaw moves for it: then the motion is the wedge.

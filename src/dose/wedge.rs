@@ -1,8 +1,9 @@
 //! Wedges of a plan's beam: which one is in, for what share of the meterset,
 //! what the beam model has under its ID, and how it lies across the field.
-//! What it does to the dose is worked out in `wedge_factor`.
+//! What it does to the dose is worked out in `wedge_factor`, for a dynamic one in `sweep`.
 
 use super::delivery::Interval;
+use super::sweep::PlannedSweep;
 use super::text::number;
 use super::{Obstacle, ObstacleKind};
 use crate::beam_model::{BeamModel, Lookup, OutOfRange, WedgeModel, WedgeModelKind, WedgeTables};
@@ -100,6 +101,8 @@ pub struct FieldWedge<'a> {
 pub(super) struct WedgeFindings<'a> {
     /// The wedge, when it and the model go together.
     pub(super) wedge: Option<FieldWedge<'a>>,
+    /// The sweep that makes the wedge, when it is a dynamic one that the model has, and the wedge in words.
+    pub(super) swept: Option<(PlannedSweep<'a>, String)>,
     /// Why there is no number with it.
     pub(super) obstacles: Vec<Obstacle>,
     /// Worth telling.
@@ -192,6 +195,14 @@ pub(super) fn wedge_of<'a>(
     if let (Some(orientation_deg), Some(known), true) =
         (orientation_deg, known, found.obstacles.is_empty())
     {
+        if let Some(sweep) = known.sweep() {
+            let name = named(wedge);
+            match PlannedSweep::new((wedge, &name), (known, sweep), orientation_deg) {
+                Ok(planned) => found.swept = Some((planned, name)),
+                Err(obstacle) => found.obstacles.push(obstacle),
+            }
+            return found;
+        }
         found.wedge = PlacedWedge::new(known, orientation_deg).map(|placed| FieldWedge {
             placed,
             share_in,
@@ -246,6 +257,10 @@ fn stated_in_plan(wedge: &Wedge, share_in: f64, found: &mut WedgeFindings<'_>) -
         ))),
         Some(WedgeKind::Standard) if share_in < 1.0 => found.obstacles.push(technique(format!(
             "{name} is STANDARD (300A,00D3) and in for {} % of the meterset only: a wedge put in by hand does not move within a beam",
+            number(100.0 * share_in)
+        ))),
+        Some(WedgeKind::Dynamic) if share_in < 1.0 => found.obstacles.push(technique(format!(
+            "{name} is DYNAMIC (300A,00D3) and in for {} % of the meterset only: a sweep that the plan does not spell out is one of the whole beam",
             number(100.0 * share_in)
         ))),
         Some(WedgeKind::PartialStandard | WedgeKind::PartialMotorized) => {
@@ -310,14 +325,10 @@ fn known_to<'a>(
         )));
         return None;
     }
-    if known.kind() == WedgeModelKind::Dynamic {
-        found.obstacles.push(technique(format!(
-            "{} is a dynamic one and the plan does not spell out how its jaw moves, which this version does not calculate: verify the beam by other means",
-            named(wedge)
-        )));
-        return None;
+    // A sweep makes smaller angles too; `sweep` sees to its angle.
+    if known.kind() != WedgeModelKind::Dynamic {
+        compare_angles(wedge, known, found);
     }
-    compare_angles(wedge, known, found);
     Some(known)
 }
 

@@ -18,7 +18,7 @@ use crate::beam_model::{BeamModel, OutOfRange};
 use crate::quantity::tolerance;
 
 /// Uncertainty of where a wedge lies, cm: half of the 2 mm that AAPM TG-40 allows for wedge position (from memory).
-const POSITION_SIGMA_CM: f64 = 0.1;
+pub(super) const POSITION_SIGMA_CM: f64 = 0.1;
 
 /// Dose follows a wedge's fluence less than fully: relative to exp(g x) the dose ratio is off by about this times the share of
 /// scatter times |g x|. Integrating the published kernel of `beam_model::kernel` over exponential fluences of 15 to 60 degrees
@@ -34,7 +34,7 @@ const FOLLOWS_LESS_LIMIT_PERCENT: f64 = 3.0;
 
 /// A reversed wedge that changes the dose by less than this could pass for a right one, per cent (an own choice: twice the
 /// built-in tolerance of wedged fields, which the plan's own deviation may use up on the other side).
-const REVERSAL_VISIBLE_PERCENT: f64 = 7.0;
+pub(super) const REVERSAL_VISIBLE_PERCENT: f64 = 7.0;
 
 fn out_of_range(which: FactorName) -> impl Fn(OutOfRange) -> FactorError {
     move |range| FactorError::OutOfRange { which, range }

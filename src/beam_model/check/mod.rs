@@ -10,6 +10,7 @@ mod outlier;
 mod output;
 mod quality;
 mod shaped;
+mod sweep;
 mod wedge;
 mod whole;
 

@@ -5,6 +5,7 @@
 
 use super::ModelFinding;
 use super::outlier;
+use super::sweep;
 use crate::beam_model::{
     BeamModel, Grid, MachineModel, WedgeBody, WedgeModel, WedgeModelKind, WedgeTables,
 };
@@ -52,6 +53,7 @@ pub(super) fn check(machine: &MachineModel, beam: &BeamModel) -> Vec<ModelFindin
                 findings.extend(sweep.factor.iter().flat_map(|grid| factor(wedge, grid)));
                 findings.extend(steepness(machine, beam, wedge, &sweep.delivered));
                 findings.extend(stands_out_in_curve(&sweep.delivered));
+                findings.extend(sweep::check(machine, beam, wedge, sweep));
             }
         }
     }

@@ -7,14 +7,14 @@ use super::depth_track::DepthTrack;
 use super::head::heights;
 use super::moments::{StepLimits, moments};
 use super::range::{OneAperture, RangeQuestion, outside_range};
-use super::results::{ShapedResult, Shares};
+use super::results::{IntervalSource, ShapedResult, Shares};
 use super::scatter_weight::scatter_weight;
 use super::spread::{DepthSpread, spread_of};
 use super::standing::{Standing, SumError};
 use super::sum::{Sums, add_up};
 use super::trace::trace_of;
 use crate::beam_model::{MachineModel, OffAxisKind};
-use crate::dose::delivery::Interval;
+use crate::dose::delivery::{Interval, same_aperture};
 use crate::dose::placement::BeamGeometry;
 use crate::dose::{
     BeamCalculation, FieldModel, Method, Obstacle, ObstacleKind, PlacedWedge, Squares, Technique,
@@ -25,6 +25,7 @@ use crate::quantity::{CollimatorSquare, PointSquare, tolerance};
 use crate::settings::Site;
 
 /// A beam that is to be integrated.
+#[derive(Clone, Copy)]
 pub(in crate::dose) struct ShapedField<'a> {
     pub(in crate::dose) beam: &'a Beam,
     pub(in crate::dose) delivered: &'a [Interval<'a>],
@@ -253,7 +254,7 @@ fn conclude(
         kernel: &kernel,
         equivalent_side_cm,
         limits: &field.site.technical,
-        one_aperture: one_aperture(result.technique, sums),
+        one_aperture: one_aperture(result.technique, field.delivered, sums),
         scatter_weight,
     }));
     let (sigma_cm, name) = field.depth_sigma;
@@ -285,12 +286,16 @@ fn conclude(
     result.shaped = Some(shaped);
 }
 
-fn one_aperture(technique: Technique, sums: &Sums) -> OneAperture {
+fn one_aperture(technique: Technique, delivered: &[Interval<'_>], sums: &Sums) -> OneAperture {
     let standing = matches!(
         technique,
         Technique::Mlc | Technique::Blocked | Technique::Wedge | Technique::Static
     );
-    if standing && sums.moments >= 1 {
+    // A dynamic wedge moves a jaw that stands still in the plan.
+    let moves = delivered
+        .iter()
+        .any(|interval| !same_aperture(interval.start, interval.end));
+    if standing && !moves && sums.moments >= 1 {
         OneAperture::Yes
     } else {
         OneAperture::No
@@ -316,6 +321,7 @@ fn shaped_result(
         },
         moments: sums.moments,
         steps,
+        intervals_from: IntervalSource::ControlPoints,
         intervals: sums.intervals.clone(),
         fluence: sums.fluence.image(),
     }

@@ -37,4 +37,4 @@ pub(super) use calculate::{ShapedField, calculate_shaped};
 pub(super) use depth_track::{DepthTrack, track_depths};
 pub use fluence_image::FluenceImage;
 pub use moments::StepLimits;
-pub use results::{ControlPointDose, ShapedResult, Shares};
+pub use results::{ControlPointDose, IntervalSource, ShapedResult, Shares};

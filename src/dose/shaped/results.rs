@@ -34,7 +34,8 @@ impl Shares {
 /// What one interval between control points adds.
 #[derive(Clone, Copy, Debug, PartialEq, Serialize)]
 pub struct ControlPointDose {
-    /// Item index of the control point that begins the interval.
+    /// Item index of the control point that begins the interval; of a sweep that the plan does not state, the index of
+    /// its stretch.
     pub from_control_point: usize,
     /// Its share of the meterset, per cent.
     pub meterset_percent: f64,
@@ -54,6 +55,17 @@ pub struct ControlPointDose {
     pub dose_per_mu_cgy: f64,
 }
 
+/// What the intervals of a result are intervals of.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "snake_case")]
+pub enum IntervalSource {
+    /// The plan's control points.
+    #[default]
+    ControlPoints,
+    /// The sweep of a jaw that the beam model has and the plan does not state.
+    ModelSweep,
+}
+
 /// Everything about the integration of one beam.
 #[derive(Clone, Debug, PartialEq, Serialize)]
 pub struct ShapedResult {
@@ -67,6 +79,8 @@ pub struct ShapedResult {
     pub moments: usize,
     /// How finely it stepped.
     pub steps: StepLimits,
+    /// What `intervals` are intervals of.
+    pub intervals_from: IntervalSource,
     /// Intervals in which meterset accrues.
     pub intervals: Vec<ControlPointDose>,
     /// Meterset-weighted open fluence.

@@ -4,7 +4,7 @@
 
 use super::beam_view::Fact;
 use super::words::counted;
-use crate::dose::{ControlPointDose, FactorName, ShapedResult, Trace};
+use crate::dose::{ControlPointDose, FactorName, IntervalSource, ShapedResult, Trace};
 use crate::report::number::{MISSING, fixed, fixed_or_dash, short};
 
 /// So many intervals are shown, spread evenly, with the first and the last.
@@ -36,6 +36,8 @@ pub(super) struct IntervalView {
 #[derive(Clone, Debug)]
 pub(super) struct IntervalsView {
     pub(super) caption: String,
+    /// Of the first column.
+    pub(super) heading: &'static str,
     pub(super) rows: Vec<IntervalView>,
     /// Sums over all intervals, also those not shown.
     pub(super) total_meterset: String,
@@ -79,7 +81,7 @@ pub(super) fn view(shaped: &ShapedResult, trace: Option<&Trace>) -> ShapedView {
             ),
         ],
         facts: facts(shaped),
-        intervals: (shaped.intervals.len() > 1).then(|| intervals(&shaped.intervals, trace)),
+        intervals: (shaped.intervals.len() > 1).then(|| intervals(shaped, trace)),
     }
 }
 
@@ -120,27 +122,36 @@ fn facts(shaped: &ShapedResult) -> Vec<Fact> {
     facts
 }
 
-fn intervals(all: &[ControlPointDose], trace: Option<&Trace>) -> IntervalsView {
+fn intervals(shaped: &ShapedResult, trace: Option<&Trace>) -> IntervalsView {
+    let all = shaped.intervals.as_slice();
+    let (of, heading) = match shaped.intervals_from {
+        IntervalSource::ControlPoints => ("Intervals between control points", "Control points"),
+        IntervalSource::ModelSweep => (
+            "Stretches of the jaw's sweep, taken from the beam model and not stated in the plan",
+            "Stretch",
+        ),
+    };
     let chosen = evenly(all.len(), INTERVALS);
     let caption = if chosen.len() < all.len() {
         format!(
-            "Intervals between control points, {} of {} evenly picked; audit.json has all",
+            "{of}, {} of {} evenly picked; audit.json has all",
             chosen.len(),
             all.len()
         )
     } else {
-        format!("Intervals between control points, all {}", all.len())
+        format!("{of}, all {}", all.len())
     };
     let rows = chosen
         .into_iter()
         .filter_map(|index| all.get(index))
-        .map(row)
+        .map(|interval| row(interval, shaped.intervals_from))
         .collect();
     let meterset_percent: f64 = all.iter().map(|interval| interval.meterset_percent).sum();
     let dose: f64 = all.iter().map(|interval| interval.dose_per_mu_cgy).sum();
     let tray = trace.and_then(|trace| trace.factor(FactorName::Tray));
     IntervalsView {
         caption,
+        heading,
         rows,
         total_meterset: fixed(meterset_percent, 1),
         total_dose: fixed(dose, 4),
@@ -157,14 +168,17 @@ fn intervals(all: &[ControlPointDose], trace: Option<&Trace>) -> IntervalsView {
     }
 }
 
-fn row(interval: &ControlPointDose) -> IntervalView {
+fn row(interval: &ControlPointDose, from: IntervalSource) -> IntervalView {
     IntervalView {
         // Items count from 1, as in the list of control points.
-        control_point: format!(
-            "{}\u{2013}{}",
-            interval.from_control_point + 1,
-            interval.from_control_point + 2
-        ),
+        control_point: match from {
+            IntervalSource::ControlPoints => format!(
+                "{}\u{2013}{}",
+                interval.from_control_point + 1,
+                interval.from_control_point + 2
+            ),
+            IntervalSource::ModelSweep => (interval.from_control_point + 1).to_string(),
+        },
         meterset: fixed(interval.meterset_percent, 2),
         gantry: interval.gantry_deg.map_or_else(
             || MISSING.to_owned(),

@@ -8,6 +8,7 @@ mod plans;
 mod properties;
 mod shaped_model;
 mod shaped_plans;
+mod swept_wedges;
 mod wedges;
 mod worked_examples;
 

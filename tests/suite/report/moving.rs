@@ -357,6 +357,7 @@ fn typed_arc() -> BeamCalculation {
     calculation.technique = Technique::Arc;
     calculation.view.point_cm = None;
     calculation.shaped = Some(ShapedResult {
+        intervals_from: counterfoil::dose::IntervalSource::ControlPoints,
         shares: Shares {
             open_primary_percent: 81.25,
             open_scatter_percent: 18.16,
@@ -409,6 +410,24 @@ fn verify_what_a_moving_field_says() {
     let cell = |column: usize, row: usize| picture.pixels[4 * row * picture.columns + 4 * column];
     assert_eq!([cell(0, 0), cell(1, 0), cell(2, 0)], [0, 128, 64]);
     assert_eq!([cell(0, 1), cell(1, 1), cell(2, 1)], [255, 0, 0]);
+}
+
+/// A sweep that the plan does not state must not pass for its control points.
+#[test]
+fn verify_a_sweep_of_the_model_is_named_as_such() {
+    let mut calculation = typed_arc();
+    calculation.technique = Technique::Wedge;
+    let shaped = calculation.shaped.as_mut().unwrap();
+    shaped.intervals_from = counterfoil::dose::IntervalSource::ModelSweep;
+    let page = page(calculation);
+    for text in [
+        "Stretches of the jaw&#39;s sweep, taken from the beam model and not stated in the plan, 12 of 60",
+        "<th scope=\"col\">Stretch</th>",
+        "<th scope=\"row\">60</th>",
+    ] {
+        assert!(page.contains(text), "{text}");
+    }
+    assert!(!page.contains("Intervals between control points"));
 }
 
 #[test]

@@ -3,13 +3,13 @@
 
 use counterfoil::audit::Verdict;
 
-use super::course::{ISOCENTRE_CM, beam, department_plan};
+use super::course::{ISOCENTRE_CM, department_plan};
 use super::sample::Sample;
-use crate::builder::{BeamSpec, DoseReferenceSpec, Encoding, GroupSpec, ReferenceSpec, WedgeSpec};
+use crate::builder::{BeamSpec, DoseReferenceSpec, Encoding, GroupSpec, ReferenceSpec};
 
 /// The samples of this file.
 pub(super) fn samples() -> Vec<Sample> {
-    vec![dynamic_wedge(), electrons()]
+    vec![electrons()]
 }
 
 /// One beam, 25 fractions.
@@ -44,28 +44,6 @@ fn plan(
         checks: &[],
         sound: None,
     }
-}
-
-fn dynamic_wedge() -> Sample {
-    plan(
-        (204, "Sumac", "WEDGE"),
-        beam(1, "Left", "ROWAN-2", 6.0)
-            .with_field(14.0, 14.0)
-            .with_ssd(91.5)
-            .with_gantry(90.0)
-            .with_wedge(WedgeSpec {
-                number: 1,
-                kind: "DYNAMIC".to_owned(),
-                id: "D30".to_owned(),
-                angle_deg: 30,
-                factor: None,
-                orientation_deg: 0.0,
-                source_to_tray_cm: None,
-            }),
-        (201.7, 1.5),
-        "dynamic-wedge.dcm",
-        "a dynamic wedge of 30 degrees; how its jaw moves stands in the machine, not in the plan",
-    )
 }
 
 fn electrons() -> Sample {

@@ -1,4 +1,4 @@
-//! Wedged fields: a pair of fixed wedges and a motorised one, and each with one
+//! Wedged fields: a pair of fixed wedges, a motorised and a dynamic one, and each with one
 //! fault, planted after the doses were fixed.
 
 use counterfoil::audit::Verdict;
@@ -17,6 +17,10 @@ pub(super) fn samples() -> Vec<Sample> {
         motorised(32, "Willow", "MOTORISED").sound(
             "motorised-wedge.dcm",
             "a motorised 60 degree wedge, in for two fifths and for a quarter of the meterset",
+        ),
+        dynamic(33, "Sumac", "SWEEP").sound(
+            "dynamic-wedge.dcm",
+            "dynamic wedges of 30 and 60 degrees; how their jaw moves stands in the machine, not in the plan",
         ),
     ]
 }
@@ -62,6 +66,21 @@ pub(super) fn faulty_samples() -> Vec<Sample> {
                 for point in &mut plan.beams[0].control_points[1..3] {
                     point.weight = Some(0.6);
                 }
+            },
+        ),
+        dynamic(325, "Sequoia", "SWEPTBACK").faulty(
+            "dynamic-wedge-reversed.dcm",
+            "the dynamic wedge of beam 1 is turned round: its orientation is 180 instead of 0 degrees",
+            (Verdict::BeyondAction, &[]),
+            |plan| first_wedge(plan).orientation_deg = 180.0,
+        ),
+        dynamic(326, "Sassafras", "STEEPER").faulty(
+            "dynamic-wedge-angle.dcm",
+            "the dynamic wedge of beam 1 is one of 45 degrees instead of 30",
+            (Verdict::BeyondAction, &[]),
+            |plan| {
+                first_wedge(plan).id = "D45".to_owned();
+                first_wedge(plan).angle_deg = 45;
             },
         ),
     ]
@@ -128,4 +147,25 @@ fn motorised(serial: u16, family: &str, label: &str) -> Course {
         .fractions(30)
         .treat(field(1, "Left", 90.0, 93.0, 0.4), 1.0, -0.6)
         .treat(field(2, "Right", 270.0, 92.0, 0.25), 1.0, 0.9)
+}
+
+/// Opposed fields across the body, 30 degrees and 60, the second asymmetric along its wedge. The thin ends lie towards the head, and
+/// the point 2 cm that way.
+fn dynamic(serial: u16, family: &str, label: &str) -> Course {
+    let field = |number, name, gantry_deg, ssd_cm| {
+        beam(number, name, "ROWAN-2", 6.0)
+            .with_gantry(gantry_deg)
+            .with_ssd(ssd_cm)
+    };
+    let left = field(1, "Left", 90.0, 91.5)
+        .with_field(12.0, 14.0)
+        .with_wedge(wedge("DYNAMIC", "D30", 30, 0.0));
+    let right = field(2, "Right", 270.0, 90.5)
+        .with_jaws([-6.0, 6.0], [-8.0, 6.0])
+        .with_wedge(wedge("DYNAMIC", "D60", 60, 0.0));
+    Course::new(serial, family, label, "Dynamic wedges")
+        .point(beside_isocentre([0.0, 0.0, 2.0]), PointStated::AtBeam)
+        .fractions(25)
+        .treat(left, 1.0, 0.8)
+        .treat(right, 1.0, -0.5)
 }

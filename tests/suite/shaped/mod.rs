@@ -8,6 +8,7 @@ mod published_squares;
 mod random;
 mod reference;
 mod steps;
+mod swept_kernel;
 mod wedged;
 mod wedged_fluence;
 

@@ -389,7 +389,7 @@ fn verify_what_a_moving_field_says() {
         "<th scope=\"row\">transmission</th><td class=\"n\">0.59</td>",
         "3.46 cm at the isocentre plane",
         "changes by at most 12.3 % within the edge margin",
-        "240 moments: in one step no leaf or jaw moves more than 0.25 cm and the gantry not more than 2.05 degrees",
+        "240 moments: in one step no leaf or jaw moves more than 0.25 cm (for head scatter no leaf more than 1 cm) and the gantry not more than 2.05 degrees",
         "Intervals between control points, 12 of 60 evenly picked; audit.json has all",
         // The last: from 182.5 + 5 * 59 = 477.5 degrees, which is 117.5.
         "<th scope=\"row\">60\u{2013}61</th><td class=\"n\">1.67</td><td class=\"n\">117.5</td>",

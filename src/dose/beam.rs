@@ -15,19 +15,20 @@ use super::prerequisite::{
     group_obstacles, meterset_obstacle, photon_model, reading_obstacles, sad_obstacles,
 };
 use super::shaped::{DepthTrack, ShapedField, calculate_shaped, track_depths};
-use super::spread::expected_spread;
+use super::spread::{ELONGATED, expected_spread};
 use super::sweep::{calculate_swept, motion_beside_sweep};
 use super::technique::{
     classify_delivered, jaws_are_the_wedge, technique_obstacles, tilt_obstacles, wedge_in,
     wedged_field_is_integrated, wedges_stay_out,
 };
+use super::text::number;
 use super::wedge::wedge_of;
 use super::wedge_factor::reversal_remark;
 use super::{
     BeamCalculation, DepthBasis, FactorError, FieldDepth, FieldInput, FieldModel, Form, Method,
     Obstacle, ObstacleKind, Squares, StepLimits, Technique, Trace, dose_per_mu,
 };
-use crate::beam_model::{MachineModel, TableKind};
+use crate::beam_model::{MachineModel, OffAxisKind, TableKind};
 use crate::plan::{Beam, ControlPoint, FractionGroup, Plan, RadiationType, ReferencedBeam};
 use crate::quantity::tolerance;
 use crate::settings::Site;
@@ -105,10 +106,14 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         &placement,
         &mut result,
     );
+    let long = technique == Technique::Static && is_long(at, model, &placement);
+    let integrated = long
+        || is_shaped(technique)
+        || technique == Technique::Wedge && wedged_field_is_integrated(beam, &delivered);
     let devices = devices_of(
         (beam, &delivered),
         at,
-        technique,
+        (technique, integrated),
         model,
         &depths,
         &mut result,
@@ -120,8 +125,6 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
             phantom: placement.ray.map(|ray| point_square(x_cm, y_cm, ray)),
         });
     }
-    let integrated = is_shaped(technique)
-        || technique == Technique::Wedge && wedged_field_is_integrated(beam, &delivered);
     if beam.radiation.value() == Some(&RadiationType::Photon)
         && devices.uncovered.is_empty()
         && let Some(model) = model
@@ -129,7 +132,16 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         // A wedge that could not be placed must not pass for an open field.
         let placed = devices.wedge.is_some() || devices.swept.is_some();
         let wedged = technique == Technique::Wedge && placed;
-        if technique == Technique::Static || wedged && !integrated {
+        let by_factors = technique == Technique::Static || wedged && !integrated;
+        let mut by_square = None;
+        if long {
+            let mut other = result.clone();
+            calculate(
+                request, at, model, &placement, &depths, &devices, &mut other,
+            );
+            by_square = other.trace.map(|trace| trace.dose_per_mu_cgy);
+        }
+        if by_factors && !long {
             calculate(
                 request,
                 at,
@@ -151,6 +163,14 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
                 &devices,
                 &mut result,
             );
+            result
+                .remarks
+                .extend(result.trace.as_ref().zip(by_square).map(|(trace, by_square)| {
+                    format!(
+                        "a field more than twice as long as wide: its phantom scatter is integrated; by its equivalent square the dose would be {} % of this",
+                        number(100.0 * by_square / trace.dose_per_mu_cgy)
+                    )
+                }));
         }
     }
     result.obstacles.extend(devices.uncovered);
@@ -295,7 +315,7 @@ fn depths_of(
 fn devices_of<'a>(
     (beam, delivered): (&Beam, &[Interval<'_>]),
     at: &ControlPoint,
-    technique: Technique,
+    (technique, integrated): (Technique, bool),
     model: Option<FieldModel<'a>>,
     depths: &DepthFindings,
     result: &mut BeamCalculation,
@@ -320,8 +340,7 @@ fn devices_of<'a>(
         devices.remarks.extend(found.remarks);
     }
     if let (Some(model), Some(gantry_deg)) = (model, at.gantry_deg.get())
-        && !is_shaped(technique)
-        && !(technique == Technique::Wedge && wedged_field_is_integrated(beam, delivered))
+        && !integrated
     {
         let couch_deg = at.couch_deg.get().unwrap_or_default();
         couch(model.beam, gantry_deg, couch_deg, depths, &mut devices);
@@ -330,6 +349,19 @@ fn devices_of<'a>(
     result.obstacles.extend(obstacle);
     result.remarks.extend(remark);
     devices
+}
+
+/// Whether the equivalent square of a field of jaws alone is too coarse, and the model has what the integration needs. An
+/// off-axis ratio measured in water is only good for the factors.
+fn is_long(at: &ControlPoint, model: Option<FieldModel<'_>>, placement: &Placement) -> bool {
+    let (Some([x_cm, y_cm]), Some(model), Some(ray)) = (openings(at), model, placement.ray) else {
+        return false;
+    };
+    let beam = model.beam;
+    let on_axis = ray.off_axis_cm() < tolerance::POSITION_CM;
+    x_cm.max(y_cm) > ELONGATED * x_cm.min(y_cm) + tolerance::POSITION_CM
+        && beam.penumbra.is_some()
+        && (on_axis || beam.off_axis.kind == OffAxisKind::InAir)
 }
 
 fn openings(at: &ControlPoint) -> Option<[f64; 2]> {

@@ -12,7 +12,7 @@ use crate::quantity::{PointSquare, sterling_side_cm, tolerance};
 const DEPTH_STEP_CM: f64 = 0.1;
 
 /// Elongation from which the equivalent square becomes doubtful.
-const ELONGATED: f64 = 2.0;
+pub(super) const ELONGATED: f64 = 2.0;
 
 /// Side over mean radius of a square, (2/pi) asinh(1) (Bjarngard & Siddon 1982).
 const MEAN_RADIUS_OF_UNIT_SQUARE: f64 = 0.561_099_852_339_18;

@@ -80,8 +80,8 @@ impl<const ROOM: usize> Raster<ROOM> {
         let share = place - cell as f32;
         Place {
             cell: cell as usize,
-            // Below the first cell nothing, beyond the last all: places outside lie on the border.
-            share: if share > 0.0 && share < 1.0 {
+            // Places outside lie on the border: there is no cell after the last to be part of.
+            share: if share > 0.0 && cell < Self::CELLS as i32 {
                 share
             } else {
                 0.0
@@ -222,6 +222,23 @@ mod tests {
                 );
             }
         }
+    }
+
+    /// Leaves may stand a little beyond the raster: what is used stays within its cells, or a picture's rows and columns
+    /// would not be those of its values.
+    #[test]
+    fn verify_what_reaches_beyond_the_raster_ends_at_its_border() {
+        let mut raster = Raster::<12>::new(5.0);
+        raster.add([-5.3, 5.4], [4.5, 5.6], 1.0);
+        raster.add([-9.0, -8.0], [0.0, 1.0], 1.0);
+        assert_eq!(raster.used(), [(5, 9), (0, 9)]);
+        let rows = raster.used_rows();
+        assert_eq!(rows.len(), 5);
+        assert!(rows.iter().all(|(_, cells)| cells.len() == 10));
+        let (row, cells) = &rows[4];
+        assert_eq!(*row, 9);
+        assert!(cells.iter().all(|cell| (cell - 0.5).abs() < 1e-6));
+        assert!(rows[0].1.iter().all(|cell| cell.abs() < 1e-6));
     }
 
     /// As many strips as rectangles, and more than there is room for: the same sums.

@@ -8,7 +8,7 @@ use super::delivery::{Interval, delivering_points, intervals};
 use super::depth::find_depths;
 use super::depth_question::{DepthFindings, DepthQuestion, DepthRow};
 use super::limits::outside_method;
-use super::modifier::{Modifiers, bolus, couch, hardware};
+use super::modifier::{Modifiers, bolus, couch, couch_doubts, hardware};
 use super::placement::{Placement, place};
 use super::point::choose_point;
 use super::prerequisite::{
@@ -492,6 +492,10 @@ fn calculate_by_integration(
     ) else {
         return;
     };
+    let couch_deg = delivered
+        .first()
+        .and_then(|interval| interval.start.couch_deg.get())
+        .unwrap_or_default();
     let field = ShapedField {
         beam,
         delivered,
@@ -501,6 +505,7 @@ fn calculate_by_integration(
         depths: track,
         depth_sigma: depth_sigma(depth.basis, request.site),
         tray: devices.tray.as_ref(),
+        couch_doubts: &couch_doubts(couch_deg, depths),
         wedge: devices.wedge.map(|wedge| (wedge.placed, wedge.index)),
         site: request.site,
         steps: request.steps,

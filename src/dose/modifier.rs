@@ -127,8 +127,16 @@ pub(super) fn couch(
         return;
     };
     found.couch = Some(arc);
-    let radiological = used_radiological(depths);
-    let twice = if radiological {
+    let doubts = couch_doubts(couch_deg, depths);
+    found.remarks.push(format!(
+        "couch transmission {} applied from the beam model (gantry {gantry_deg:.1} degrees); whether the planning system has the couch in its dose is not stated in the plan{doubts}",
+        arc.transmission
+    ));
+}
+
+/// What stands against the couch of the model: clauses that follow a remark, or nothing.
+pub(super) fn couch_doubts(couch_deg: f64, depths: &DepthFindings) -> String {
+    let twice = if used_radiological(depths) {
         "; the effective depth may already contain the couch, then it counts twice"
     } else {
         ""
@@ -138,10 +146,7 @@ pub(super) fn couch(
     } else {
         ""
     };
-    found.remarks.push(format!(
-        "couch transmission {} applied from the beam model (gantry {gantry_deg:.1} degrees); whether the planning system has the couch in its dose is not stated in the plan{twice}{turned}",
-        arc.transmission
-    ));
+    format!("{twice}{turned}")
 }
 
 /// Whether the depth in use is a radiological one.

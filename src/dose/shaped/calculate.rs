@@ -36,6 +36,8 @@ pub(in crate::dose) struct ShapedField<'a> {
     /// 1-sigma uncertainty of the depth, cm, and its basis in words.
     pub(in crate::dose) depth_sigma: (f64, &'a str),
     pub(in crate::dose) tray: Option<&'a Tray>,
+    /// What stands against the couch of the model: clauses that follow the remark on it.
+    pub(in crate::dose) couch_doubts: &'a str,
     /// The wedge, with its item index in the beam.
     pub(in crate::dose) wedge: Option<(PlacedWedge<'a>, usize)>,
     pub(in crate::dose) site: &'a Site,
@@ -268,8 +270,8 @@ fn conclude(
     ));
     if sums.couch_share > 0.0 {
         result.remarks.push(format!(
-            "couch transmission applied from the beam model for {:.0} % of the meterset; whether the planning system has the couch in its dose is not stated in the plan",
-            100.0 * sums.couch_share
+            "couch transmission applied from the beam model for {:.0} % of the meterset; whether the planning system has the couch in its dose is not stated in the plan{}",
+            100.0 * sums.couch_share, field.couch_doubts
         ));
     }
     if let Some(point) = &mut result.point

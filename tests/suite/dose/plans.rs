@@ -5,8 +5,8 @@ use std::sync::Arc;
 
 use counterfoil::beam_model::{CouchArc, MachineModel};
 use counterfoil::dose::{
-    BeamCalculation, BeamRequest, DepthBasis, DepthRow, FactorName, ModelAnswer, ObstacleKind,
-    PointBasis, StepLimits, Technique, calculate_beam,
+    BeamCalculation, BeamRequest, DepthBasis, DepthRow, FactorName, Method, ModelAnswer,
+    ObstacleKind, PointBasis, StepLimits, Technique, calculate_beam,
 };
 use counterfoil::plan::{
     Accessory, Applicator, Block, Bolus, Compensator, DeliveryType, DeviceKind, DoseReference,
@@ -16,6 +16,7 @@ use counterfoil::plan::{
 use counterfoil::quantity::{Given, Point};
 use counterfoil::settings::Site;
 
+use super::shaped_model::shaped_machine;
 use super::{
     assert_close, calculate, calculate_with, kinds, plain_plan, plan_with, plan_with_points, tg71,
     verified_cgy_per_mu,
@@ -803,6 +804,31 @@ fn verify_couch_that_may_count_twice() {
     };
     assert!(remark(None).contains("counts twice"));
     assert!(!remark(Some(&row(10.0, None, None))).contains("counts twice"));
+}
+
+/// A long field is integrated, and the doubts about its couch are told as for one that goes by factors.
+#[test]
+fn verify_couch_of_a_long_field_that_may_count_twice() {
+    let mut machine = shaped_machine();
+    machine.beams[0].couch = vec![CouchArc {
+        from_deg: 350.0,
+        to_deg: 10.0,
+        transmission: 0.975,
+    }];
+    let mut plan = with_sets(vec![set(
+        PointDepthPlace::ReferencedBeam,
+        [Some(10.0), Some(10.0), None],
+    )]);
+    for point in &mut plan.beams[0].control_points {
+        point.jaws_x_cm = Given::stated([-12.0, 12.0]);
+        point.jaws_y_cm = Given::stated([-4.0, 4.0]);
+        point.couch_deg = Given::stated(15.0);
+    }
+    let result = calculate_beam(&request(&plan, &machine, &Site::default(), None));
+    assert_eq!(result.method, Some(Method::ScatterIntegration));
+    let remarks = result.remarks.concat();
+    assert!(remarks.contains("counts twice"), "{remarks}");
+    assert!(remarks.contains("turned couch"), "{remarks}");
 }
 
 /// What the plan alone gives is there without a model.

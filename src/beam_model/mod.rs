@@ -5,6 +5,7 @@
 
 mod beam;
 mod check;
+mod collimator_square;
 mod derive;
 mod error;
 mod head_scatter;
@@ -27,6 +28,7 @@ pub use beam::{
     ReferenceOutput, TableKind,
 };
 pub use check::{ModelFinding, ModelSeverity, TablePlace, check_machine, tpr20_10_from_pdd20_10};
+pub use collimator_square::collimator_square;
 pub use derive::{DerivedTable, derivable_grid, derive_table};
 pub use error::ModelError;
 pub use head_scatter::{HeadScatter, HeadScatterCell, HeadView, HeadWindow};

@@ -8,7 +8,7 @@ use super::delivery::Interval;
 use super::{BeamView, BlockOutline, LastAperture, LeafOpening, RayPoint};
 use crate::beam_model::JawAxis;
 use crate::plan::{Beam, BlockType, ControlPoint, LeafAxis, LeafPositions};
-use crate::quantity::{CollimatorSquare, PointSquare, sterling_side_cm, tolerance};
+use crate::quantity::{PointSquare, sterling_side_cm, tolerance};
 
 /// What the leaves do to the jaw opening.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -225,22 +225,6 @@ fn opening_at(beam: &Beam, point: &ControlPoint, axis: JawAxis) -> Option<f64> {
             (greatest > least).then_some(greatest - least)
         })
         .reduce(f64::min)
-}
-
-/// Square equivalent to a jaw opening for collimator scatter, (1 + k) L U / (k L + U),
-/// U the opening of the upper jaws, L of the lower ones (Vadash & Bjarngard 1993).
-#[must_use]
-pub fn collimator_square(
-    x_cm: f64,
-    y_cm: f64,
-    upper_jaws: JawAxis,
-    exchange_k: f64,
-) -> CollimatorSquare {
-    let (upper, lower) = match upper_jaws {
-        JawAxis::X => (x_cm, y_cm),
-        JawAxis::Y => (y_cm, x_cm),
-    };
-    CollimatorSquare::new((1.0 + exchange_k) * lower * upper / (exchange_k * lower + upper))
 }
 
 /// Square equivalent to a jaw opening for phantom scatter at the point's plane:

@@ -3,7 +3,7 @@
 //! also when no model is there or no method covers the beam. Whether the dose
 //! is the planned one is judged in `audit`.
 
-use super::aperture::{collimator_square, mean_openings, point_square, view_between};
+use super::aperture::{mean_openings, point_square, view_between};
 use super::delivery::{Interval, delivering_points, intervals};
 use super::depth::find_depths;
 use super::depth_question::{DepthFindings, DepthQuestion, DepthRow};
@@ -28,7 +28,7 @@ use super::{
     BeamCalculation, DepthBasis, FactorError, FieldDepth, FieldInput, FieldModel, Form, Method,
     Obstacle, ObstacleKind, Squares, StepLimits, Technique, Trace, dose_per_mu,
 };
-use crate::beam_model::{MachineModel, OffAxisKind, TableKind};
+use crate::beam_model::{MachineModel, OffAxisKind, TableKind, collimator_square};
 use crate::plan::{Beam, ControlPoint, FractionGroup, Plan, RadiationType, ReferencedBeam};
 use crate::quantity::tolerance;
 use crate::settings::Site;

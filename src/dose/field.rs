@@ -4,9 +4,11 @@
 
 use thiserror::Error;
 
-use super::aperture::{collimator_square, point_square};
+use super::aperture::point_square;
 use super::{Factor, FactorName, FieldWedge, RayPoint};
-use crate::beam_model::{BeamModel, CouchArc, JawAxis, OffAxisKind, OutOfRange, ReferenceOutput};
+use crate::beam_model::{
+    BeamModel, CouchArc, JawAxis, OffAxisKind, OutOfRange, ReferenceOutput, collimator_square,
+};
 use crate::quantity::{CollimatorSquare, PointSquare, tolerance};
 
 /// A beam model with what the collimator exchange needs to know of its machine.

@@ -31,7 +31,7 @@ mod trace;
 mod wedge;
 mod wedge_factor;
 
-pub use aperture::{collimator_square, point_square};
+pub use aperture::point_square;
 pub use beam::{BeamRequest, ModelAnswer, calculate_beam};
 pub use depth_question::DepthRow;
 pub use factors::dose_per_mu;

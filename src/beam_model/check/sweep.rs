@@ -3,7 +3,9 @@
 //! two tables are of one wedge. How steep the sweep is, `wedge` looks at.
 
 use super::ModelFinding;
-use crate::beam_model::{BeamModel, Grid, MachineModel, WedgeModel, WedgeSweep};
+use crate::beam_model::{
+    BeamModel, Grid, JawAxis, MachineModel, WedgeModel, WedgeSweep, collimator_square,
+};
 use crate::quantity::CollimatorSquare;
 
 /// Beyond this the measured factor and the sweep are not of one wedge, per cent (an own choice).
@@ -143,22 +145,20 @@ fn on_axis(
     ratio.is_finite().then_some(ratio)
 }
 
-/// Sc of an opening, across and along the sweep, by the equivalent square (1 + k) L U / (k L + U) (Vadash & Bjarngard
-/// 1993); below the smallest opening of the table that one, where little more than scatter is left.
+/// Sc of an opening, across and along the sweep; below the smallest opening of the table that one, where little more than
+/// scatter is left.
 fn collimator_scatter(
     machine: &MachineModel,
     beam: &BeamModel,
     sweep: &WedgeSweep,
     [across_cm, along_cm]: [f64; 2],
 ) -> Option<f64> {
-    let (upper, lower) = if sweep.moves_along == machine.upper_jaws {
-        (along_cm, across_cm)
-    } else {
-        (across_cm, along_cm)
+    let (x_cm, y_cm) = match sweep.moves_along {
+        JawAxis::X => (along_cm, across_cm),
+        JawAxis::Y => (across_cm, along_cm),
     };
-    let k = beam.exchange_k;
-    let side_cm = (1.0 + k) * lower * upper / (k * lower + upper);
+    let square = collimator_square(x_cm, y_cm, machine.upper_jaws, beam.exchange_k);
     let least_cm = *beam.output_factors.sc.rows().first()?;
-    let square = CollimatorSquare::new(side_cm.max(least_cm));
+    let square = CollimatorSquare::new(square.side_cm().max(least_cm));
     Some(beam.sc(square).ok()?.value)
 }

@@ -2,8 +2,8 @@
 
 use super::opening::Opening;
 use super::standing::{Standing, SumError};
+use crate::beam_model::collimator_square;
 use crate::dose::FactorName;
-use crate::dose::aperture::collimator_square;
 use crate::quantity::{CollimatorSquare, tolerance};
 
 /// Head scatter of the jaws, kept while the jaws stand still.

@@ -1,9 +1,8 @@
 //! What must hold for any field, whatever the numbers.
 
-use counterfoil::beam_model::{JawAxis, MachineModel};
+use counterfoil::beam_model::{JawAxis, MachineModel, collimator_square};
 use counterfoil::dose::{
-    FactorName, FieldDepth, FieldInput, FieldModel, Form, RayPoint, Typed, collimator_square,
-    dose_per_mu,
+    FactorName, FieldDepth, FieldInput, FieldModel, Form, RayPoint, Typed, dose_per_mu,
 };
 use counterfoil::quantity::{Given, Point, sterling_side_cm};
 use proptest::prelude::*;

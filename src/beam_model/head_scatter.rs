@@ -160,7 +160,7 @@ impl HeadScatter {
     #[must_use]
     #[inline]
     pub fn window(&self, edges_cm: [f64; 2], point_cm: f64, device_cm: f64) -> HeadWindow {
-        let lever = (self.sad_cm - self.plane_cm) / (self.sad_cm - device_cm);
+        let lever = self.lever(device_cm);
         HeadWindow {
             bounds_cm: edges_cm
                 .map(|edge_cm| point_cm + (edge_cm * device_cm / self.sad_cm - point_cm) * lever),
@@ -174,11 +174,16 @@ impl HeadScatter {
         normal_between(x.bounds_cm, self.sigma_cm) * normal_between(y.bounds_cm, self.sigma_cm)
     }
 
+    /// How much further from the point the extra-focal plane is than a device.
+    fn lever(&self, device_cm: f64) -> f64 {
+        (self.sad_cm - self.plane_cm) / (self.sad_cm - device_cm)
+    }
+
     /// How edges of a device at its height, cm from the source, are seen from a point, its coordinate along the same axis,
     /// cm, at the isocentre plane.
     #[must_use]
     pub fn view(&self, point_cm: f64, device_cm: f64) -> HeadView {
-        let lever = (self.sad_cm - self.plane_cm) / (self.sad_cm - device_cm);
+        let lever = self.lever(device_cm);
         HeadView {
             at_axis: point_cm * (1.0 - lever) / self.sigma_cm,
             per_cm: device_cm / self.sad_cm * lever / self.sigma_cm,

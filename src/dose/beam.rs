@@ -132,16 +132,7 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
         // A wedge that could not be placed must not pass for an open field.
         let placed = devices.wedge.is_some() || devices.swept.is_some();
         let wedged = technique == Technique::Wedge && placed;
-        let by_factors = technique == Technique::Static || wedged && !integrated;
-        let mut by_square = None;
-        if long {
-            let mut other = result.clone();
-            calculate(
-                request, at, model, &placement, &depths, &devices, &mut other,
-            );
-            by_square = other.trace.map(|trace| trace.dose_per_mu_cgy);
-        }
-        if by_factors && !long {
+        if (technique == Technique::Static || wedged) && !integrated {
             calculate(
                 request,
                 at,
@@ -155,6 +146,7 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
             && technique_obstacles.is_empty()
             && (wedged || technique != Technique::Wedge)
         {
+            let mut by_square = long.then(|| result.clone());
             calculate_by_integration(
                 request,
                 (beam, &delivered),
@@ -163,14 +155,10 @@ pub fn calculate_beam(request: &BeamRequest<'_>) -> BeamCalculation {
                 &devices,
                 &mut result,
             );
-            result
-                .remarks
-                .extend(result.trace.as_ref().zip(by_square).map(|(trace, by_square)| {
-                    format!(
-                        "a field more than twice as long as wide: its phantom scatter is integrated; by its equivalent square the dose would be {} % of this",
-                        number(100.0 * by_square / trace.dose_per_mu_cgy)
-                    )
-                }));
+            if let Some(other) = &mut by_square {
+                calculate(request, at, model, &placement, &depths, &devices, other);
+                result.remarks.extend(square_remark(&result, other));
+            }
         }
     }
     result.obstacles.extend(devices.uncovered);
@@ -349,6 +337,15 @@ fn devices_of<'a>(
     result.obstacles.extend(obstacle);
     result.remarks.extend(remark);
     devices
+}
+
+/// What the equivalent square would have given for a field that was integrated for its length.
+fn square_remark(integrated: &BeamCalculation, by_square: &BeamCalculation) -> Option<String> {
+    let dose = |result: &BeamCalculation| Some(result.trace.as_ref()?.dose_per_mu_cgy);
+    Some(format!(
+        "a field more than twice as long as wide: its phantom scatter is integrated; by its equivalent square the dose would be {} % of this",
+        number(100.0 * dose(by_square)? / dose(integrated)?)
+    ))
 }
 
 /// Whether the equivalent square of a field of jaws alone is too coarse, and the model has what the integration needs. An

@@ -210,6 +210,32 @@ pub struct Obstacle {
     pub message: String,
 }
 
+impl Obstacle {
+    /// The model lacks something or contradicts the plan.
+    pub(super) const fn model(message: String) -> Self {
+        Self {
+            kind: ObstacleKind::Model,
+            message,
+        }
+    }
+
+    /// The plan does not say what is needed.
+    pub(super) const fn reading(message: String) -> Self {
+        Self {
+            kind: ObstacleKind::Reading,
+            message,
+        }
+    }
+
+    /// No method covers what the plan has.
+    pub(super) const fn technique(message: String) -> Self {
+        Self {
+            kind: ObstacleKind::Technique,
+            message,
+        }
+    }
+}
+
 /// One contribution to the expected spread.
 #[derive(Clone, Debug, PartialEq, Serialize)]
 pub struct SpreadTerm {

@@ -2,10 +2,10 @@
 //! what the beam model has under its ID, and how it lies across the field.
 //! What it does to the dose is worked out in `wedge_factor`, for a dynamic one in `sweep`.
 
+use super::Obstacle;
 use super::delivery::Interval;
 use super::sweep::PlannedSweep;
 use super::text::number;
-use super::{Obstacle, ObstacleKind};
 use crate::beam_model::{BeamModel, Lookup, OutOfRange, WedgeModel, WedgeModelKind, WedgeTables};
 use crate::plan::{Beam, ControlPoint, Wedge, WedgeKind};
 use crate::quantity::{Given, PointSquare, tolerance};
@@ -109,27 +109,6 @@ pub(super) struct WedgeFindings<'a> {
     pub(super) remarks: Vec<String>,
 }
 
-fn technique(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::Technique,
-        message,
-    }
-}
-
-fn reading(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::Reading,
-        message,
-    }
-}
-
-fn unlike_model(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::Model,
-        message,
-    }
-}
-
 /// A wedge in words.
 fn named(wedge: &Wedge) -> String {
     match wedge.id.value() {
@@ -158,13 +137,13 @@ pub(super) fn wedge_of<'a>(
         more(interval.start.wedges.len()) || more(interval.end.wedges.len())
     });
     if dangling {
-        found.obstacles.push(reading(
+        found.obstacles.push(Obstacle::reading(
             "a control point gives the position of a wedge that the beam does not have".to_owned(),
         ));
     }
     if let [_, _, ..] = *used {
         let names: Vec<String> = used.iter().map(|(_, wedge, _)| named(wedge)).collect();
-        found.obstacles.push(technique(format!(
+        found.obstacles.push(Obstacle::technique(format!(
             "{} are in the beam: more than one wedge is not calculated, verify the beam by other means",
             names.join(" and ")
         )));
@@ -180,7 +159,7 @@ pub(super) fn wedge_of<'a>(
         !interval.start.cumulative_weight.is_absent() && !interval.end.cumulative_weight.is_absent()
     });
     if !always_in && !weights_stated {
-        found.obstacles.push(reading(format!(
+        found.obstacles.push(Obstacle::reading(format!(
             "{} is in for a part of the meterset, and the cumulative meterset weights (300A,0134) do not say for how much",
             named(wedge)
         )));
@@ -231,14 +210,14 @@ fn weight_in(index: usize, wedge: &Wedge, delivered: &[Interval<'_>]) -> Result<
             (Some(false), Some(false)) => {}
             (Some(start), Some(_)) => {
                 let (one, other) = if start { ("in", "out") } else { ("out", "in") };
-                return Err(reading(format!(
+                return Err(Obstacle::reading(format!(
                     "{} is {one} at control point {first} and {other} at {}, with meterset in between: for how much of it the wedge is in is not stated",
                     named(wedge),
                     first + 1
                 )));
             }
             _ => {
-                return Err(reading(format!(
+                return Err(Obstacle::reading(format!(
                     "Wedge Position (300A,0118) of {} is not given where meterset accrues (from control point {first})",
                     named(wedge)
                 )));
@@ -252,35 +231,35 @@ fn weight_in(index: usize, wedge: &Wedge, delivered: &[Interval<'_>]) -> Result<
 fn stated_in_plan(wedge: &Wedge, share_in: f64, found: &mut WedgeFindings<'_>) -> Option<f64> {
     let name = named(wedge);
     match wedge.kind.value() {
-        None => found.obstacles.push(reading(format!(
+        None => found.obstacles.push(Obstacle::reading(format!(
             "Wedge Type (300A,00D3) of {name} is not given"
         ))),
-        Some(WedgeKind::Standard) if share_in < 1.0 => found.obstacles.push(technique(format!(
+        Some(WedgeKind::Standard) if share_in < 1.0 => found.obstacles.push(Obstacle::technique(format!(
             "{name} is STANDARD (300A,00D3) and in for {} % of the meterset only: a wedge put in by hand does not move within a beam",
             number(100.0 * share_in)
         ))),
-        Some(WedgeKind::Dynamic) if share_in < 1.0 => found.obstacles.push(technique(format!(
+        Some(WedgeKind::Dynamic) if share_in < 1.0 => found.obstacles.push(Obstacle::technique(format!(
             "{name} is DYNAMIC (300A,00D3) and in for {} % of the meterset only: a sweep that the plan does not spell out is one of the whole beam",
             number(100.0 * share_in)
         ))),
         Some(WedgeKind::PartialStandard | WedgeKind::PartialMotorized) => {
-            found.obstacles.push(technique(format!(
+            found.obstacles.push(Obstacle::technique(format!(
                 "{name} is a partial one that does not reach over the whole field, which this version does not calculate"
             )));
         }
-        Some(WedgeKind::Other(kind)) => found.obstacles.push(technique(format!(
+        Some(WedgeKind::Other(kind)) => found.obstacles.push(Obstacle::technique(format!(
             "{name} is of type {kind} (300A,00D3), which this version does not calculate"
         ))),
         Some(WedgeKind::Standard | WedgeKind::Motorized | WedgeKind::Dynamic) => {}
     }
     if wedge.id.value().is_none_or(|id| id.trim().is_empty()) {
-        found.obstacles.push(reading(
+        found.obstacles.push(Obstacle::reading(
             "Wedge ID (300A,00D4) is not given: which wedge is in the beam is not certain"
                 .to_owned(),
         ));
     }
     if wedge.orientation_deg.is_absent() {
-        found.obstacles.push(reading(format!(
+        found.obstacles.push(Obstacle::reading(format!(
             "Wedge Orientation (300A,00D8) of {name} is not given: where its thin end lies is not certain"
         )));
     }
@@ -301,7 +280,7 @@ fn known_to<'a>(
         } else {
             ids.join(", ")
         };
-        found.obstacles.push(unlike_model(format!(
+        found.obstacles.push(Obstacle::model(format!(
             "the beam model does not know {} for {}; known wedges: {ids}",
             named(wedge),
             model.label
@@ -317,7 +296,7 @@ fn known_to<'a>(
         }
     };
     if as_planned != known.kind() {
-        found.obstacles.push(unlike_model(format!(
+        found.obstacles.push(Obstacle::model(format!(
             "the plan has {} as a {} one (300A,00D3), the beam model as a {} one",
             named(wedge),
             as_planned.term(),
@@ -353,7 +332,7 @@ fn compare_angles(wedge: &Wedge, known: &WedgeModel, found: &mut WedgeFindings<'
             number(known.angle_deg)
         ));
     } else if difference_deg.abs() > tolerance::ANGLE_DEG || difference_deg.is_nan() {
-        found.obstacles.push(unlike_model(format!(
+        found.obstacles.push(Obstacle::model(format!(
             "the plan states {} degrees for {} (300A,00D5), the beam model {}",
             number(planned_deg),
             named(wedge),

@@ -22,13 +22,6 @@ pub(super) struct Bank<'a> {
     pub(super) model: &'a LeafBank,
 }
 
-fn unlike(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::Model,
-        message,
-    }
-}
-
 /// Every leaf bank of the beam, with the model's bank of the same axis and order.
 pub(super) fn banks<'a>(
     beam: &'a Beam,
@@ -50,7 +43,7 @@ pub(super) fn banks<'a>(
         let layer = usize::from(device.kind.leaf_layer()).saturating_sub(1);
         let banks = machine.collimation.leaf_banks.iter();
         let Some(model) = banks.filter(|bank| bank.moves_along == axis).nth(layer) else {
-            return Err(unlike(format!(
+            return Err(Obstacle::model(format!(
                 "the plan has the leaf bank {term}, the beam model {} has none like it: no transmission is known",
                 machine.name
             )));
@@ -73,7 +66,7 @@ fn refuse_other_layout(
     name: &str,
 ) -> Result<(), Obstacle> {
     if boundaries_cm.len() != model.boundaries_cm.len() {
-        return Err(unlike(format!(
+        return Err(Obstacle::model(format!(
             "the plan's {term} has {} leaf boundaries, the beam model {name} has {}",
             boundaries_cm.len(),
             model.boundaries_cm.len()
@@ -84,7 +77,7 @@ fn refuse_other_layout(
         .zip(&model.boundaries_cm)
         .find(|(plan, model)| (**plan - **model).abs() > BOUNDARY_CM);
     if let Some((plan_cm, model_cm)) = apart {
-        return Err(unlike(format!(
+        return Err(Obstacle::model(format!(
             "a leaf boundary of {term} is at {plan_cm:.2} cm in the plan and at {model_cm:.2} cm in the beam model {name}"
         )));
     }

@@ -64,13 +64,6 @@ pub(in crate::dose) fn calculate_shaped(field: &ShapedField<'_>, result: &mut Be
     }
 }
 
-fn model_obstacle(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::Model,
-        message,
-    }
-}
-
 /// What the calculation rests on; what the model lacks becomes an obstacle.
 fn standing<'a>(
     field: &'a ShapedField<'_>,
@@ -81,7 +74,7 @@ fn standing<'a>(
     let model = field.model.beam;
     let name = &field.machine.name;
     let Some(penumbra) = model.penumbra else {
-        result.obstacles.push(model_obstacle(format!(
+        result.obstacles.push(Obstacle::model(format!(
             "the beam model {name} gives no penumbra_sigma_cm for {}: shaped and moving fields need it",
             model.label
         )));
@@ -94,13 +87,13 @@ fn standing<'a>(
         match (&model.head_scatter, heights) {
             (Some(head), Ok(heights)) => Some((head, heights)),
             (_, Err(key)) => {
-                result.obstacles.push(model_obstacle(format!(
+                result.obstacles.push(Obstacle::model(format!(
                     "the beam model {name} does not give {key}: the head scatter of an aperture needs it"
                 )));
                 return None;
             }
             (None, Ok(_)) => {
-                result.obstacles.push(model_obstacle(format!(
+                result.obstacles.push(Obstacle::model(format!(
                     "the beam model {name} gives no usable extra_focal_distance_cm for {}: the head scatter of an aperture needs it",
                     model.label
                 )));
@@ -223,7 +216,7 @@ fn conclude(
 ) {
     let beam = field.model.beam;
     if beam.off_axis.kind == OffAxisKind::InWater && sums.off_axis_cm >= tolerance::POSITION_CM {
-        result.obstacles.push(model_obstacle(format!(
+        result.obstacles.push(Obstacle::model(format!(
             "the point is off the axis and the off-axis ratios of {} are measured in water, which holds the scatter of another field: the number shown may be wrong by several per cent",
             beam.label
         )));

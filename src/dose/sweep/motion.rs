@@ -1,7 +1,7 @@
 //! The motion of the jaw in one field: where it begins and stops, which share of
 //! the meterset it has delivered where, and what keeps the field from being swept at all. It is told in `words`.
 
-use super::planned::{PlannedSweep, ThinEnd, reading, unlike_model};
+use super::planned::{PlannedSweep, ThinEnd};
 use crate::beam_model::{JawAxis, MachineModel};
 use crate::dose::delivery::Interval;
 use crate::dose::text::number;
@@ -46,7 +46,7 @@ impl<'a> PlannedSweep<'a> {
             JawAxis::Y => &at.jaws_y_cm,
         };
         let [low_cm, high_cm] = jaws.get().ok_or_else(|| {
-            reading(format!(
+            Obstacle::reading(format!(
                 "the positions of the jaws {} and {} are not given: where the sweep of the wedge {} begins is not certain",
                 self.jaw_names()[0],
                 self.jaw_names()[1],
@@ -88,7 +88,7 @@ impl<'a> PlannedSweep<'a> {
         let shares = [mixed(share(from_cm)?), mixed(share(to_cm)?)];
         // Without fluence on the axis there is nothing to weigh the angle by.
         if !(at_axis > 0.0 && shares[1] > 0.0) {
-            return Err(unlike_model(format!(
+            return Err(Obstacle::model(format!(
                 "the sweep of the wedge {} ({}) delivers nothing before its jaw reaches the axis or the end of the field",
                 self.id(),
                 self.sweep.delivered.name()
@@ -128,7 +128,7 @@ impl<'a> PlannedSweep<'a> {
         let beyond = |reaches_cm: f64, limit_cm: Option<f64>, what: &str| {
             let limit_cm = limit_cm?;
             (reaches_cm > limit_cm + tolerance::POSITION_CM).then(|| {
-                unlike_model(format!(
+                Obstacle::model(format!(
                     "the sweep of the wedge {} takes the jaw {} {} cm {what} the axis, and the beam model lets it go {} cm: the machine cannot deliver this field",
                     self.id(),
                     self.jaw_names()[0],

@@ -4,7 +4,7 @@
 use crate::beam_model::{JawAxis, WedgeModel, WedgeSweep};
 use crate::dose::delivery::turn_between_deg;
 use crate::dose::text::number;
-use crate::dose::{Obstacle, ObstacleKind, Technique};
+use crate::dose::{Obstacle, Technique};
 use crate::plan::Wedge;
 use crate::quantity::tolerance;
 
@@ -29,26 +29,9 @@ pub(super) enum ThinEnd {
     Negative,
 }
 
-pub(super) fn unlike_model(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::Model,
-        message,
-    }
-}
-
-pub(super) fn reading(message: String) -> Obstacle {
-    Obstacle {
-        kind: ObstacleKind::Reading,
-        message,
-    }
-}
-
 /// What keeps a sweep that the plan does not state from being put into a beam that moves otherwise.
 pub(in crate::dose) fn motion_beside_sweep(technique: Technique) -> Option<Obstacle> {
-    (technique != Technique::Wedge).then(|| Obstacle {
-        kind: ObstacleKind::Technique,
-        message: "a dynamic wedge whose jaw motion the control points do not spell out is in a beam whose opening or gantry moves: how the two go together is not stated, verify the beam by other means".to_owned(),
-    })
+    (technique != Technique::Wedge).then(|| Obstacle::technique("a dynamic wedge whose jaw motion the control points do not spell out is in a beam whose opening or gantry moves: how the two go together is not stated, verify the beam by other means".to_owned()))
 }
 
 impl<'a> PlannedSweep<'a> {
@@ -63,7 +46,7 @@ impl<'a> PlannedSweep<'a> {
         orientation_deg: f64,
     ) -> Result<Self, Obstacle> {
         let Some(angle_deg) = wedge.angle_deg.get() else {
-            return Err(reading(format!(
+            return Err(Obstacle::reading(format!(
                 "Wedge Angle (300A,00D5) of {name} is not given: how much of the sweep it takes is not certain"
             )));
         };
@@ -72,7 +55,7 @@ impl<'a> PlannedSweep<'a> {
             && angle_deg <= model.angle_deg + tolerance::ANGLE_DEG
             && model.angle_deg < 90.0;
         if !usable {
-            return Err(unlike_model(format!(
+            return Err(Obstacle::model(format!(
                 "the plan states {} degrees for {name} (300A,00D5); the beam model's sweep makes angles above 0 and up to {} degrees",
                 number(angle_deg),
                 number(model.angle_deg)
@@ -88,7 +71,7 @@ impl<'a> PlannedSweep<'a> {
             (true, _) => ThinEnd::Positive,
             (_, true) => ThinEnd::Negative,
             (false, false) => {
-                return Err(unlike_model(format!(
+                return Err(Obstacle::model(format!(
                     "Wedge Orientation (300A,00D8) of {name} is {} degrees, and the beam model's sweep is one of the {axis} jaws, which make a wedge at {positive_deg} and {negative_deg} degrees only",
                     number(orientation_deg)
                 )));

@@ -145,6 +145,14 @@ fn verified_cgy_per_mu(calculation: &BeamCalculation) -> f64 {
     calculation.trace.as_ref().unwrap().dose_per_mu_cgy
 }
 
+/// An obstacle's kind and message, and what the message must name.
+fn assert_says((found, message): (ObstacleKind, String), kind: ObstacleKind, parts: &[&str]) {
+    assert_eq!(found, kind, "{message}");
+    for part in parts {
+        assert!(message.contains(part), "`{part}` is not in: {message}");
+    }
+}
+
 fn assert_close(found: f64, wanted: f64, within: f64) {
     assert!(
         (found - wanted).abs() <= within,
